@@ -1,0 +1,32 @@
+"""What a rule may look at: the design and everything computed about it.  Nothing here draws."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+from patterngen.model.design import Design
+from patterngen.model.lattice import FloatArray
+from patterngen.model.verdict import Balance, BeatTable, Limit
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Evidence:
+    """Inputs of every rule.
+
+    `limits` are those in force (process and overrides) by name.  `tones_together` (m, screens)
+    lists plate tones that occur together somewhere on the sheet, `printed_together` the same
+    after gain.  `luminance` maps an ink's name to Y of its solid (paper = 1).
+    """
+
+    design: Design
+    beats: BeatTable
+    balance: tuple[Balance, ...]
+    limits: Mapping[str, Limit]
+    tones_together: FloatArray
+    printed_together: FloatArray
+    luminance: Mapping[str, float]
+    tone_extremes: Mapping[str, tuple[float, float]]
+    """Per screen: (smallest non-zero, largest) plate tone that occurs."""
+    shapes_drawn: Mapping[str, int | None]
+    """Per screen: how many shapes it draws, None where that was not counted."""
