@@ -3,10 +3,20 @@
 from __future__ import annotations
 
 import tomllib
+from dataclasses import dataclass
 from functools import cache
 from importlib import resources
+from typing import Literal
 
-from patterngen.model.verdict import Source
+Standing = Literal["published", "common practice", "from memory", "derived"]
+
+
+@dataclass(frozen=True, slots=True)
+class Source:
+    """Where a number or a rule comes from, and how far it may be trusted."""
+
+    text: str
+    standing: Standing
 
 
 @cache

@@ -11,18 +11,10 @@ from numpy.typing import NDArray
 
 from patterngen.model.lattice import FloatArray
 from patterngen.model.screen import ComplexArray
+from patterngen.sources import Source
 
-Standing = Literal["published", "common practice", "from memory", "derived"]
 Status = Literal["pass", "warn", "fail", "waived", "not-applicable"]
 Grade = Literal["unseen", "texture", "visible"]
-
-
-@dataclass(frozen=True, slots=True)
-class Source:
-    """Where a number or a rule comes from, and how far it may be trusted."""
-
-    text: str
-    standing: Standing
 
 
 @dataclass(frozen=True, slots=True)
