@@ -1,0 +1,1 @@
+"""Inks and overprints to XYZ and CIELAB; what screens show of them."""

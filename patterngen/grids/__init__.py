@@ -1,0 +1,1 @@
+"""Periodic structures that are not ink, one file a kind."""

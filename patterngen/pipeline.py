@@ -1,0 +1,155 @@
+"""The life of one run, in order: Job, what was left open, Design, beats, findings, files."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Literal
+
+import numpy as np
+
+from patterngen import registry
+from patterngen.errors import Fault, InputError
+from patterngen.model.design import Design, Layer, Sheet
+from patterngen.model.evidence import Evidence
+from patterngen.model.job import Job
+from patterngen.model.seeing import Viewer
+from patterngen.model.verdict import Finding, Verdict
+
+if TYPE_CHECKING:
+    from patterngen.colour.inks import InkStack
+
+Stage = Callable[[str], None]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Proof:
+    """A design with its verdict: what `build` needs to write, and what `verify` throws away."""
+
+    design: Design
+    verdict: Verdict
+    colours: InkStack
+
+
+def verify(job: Job, *, progress: Stage | None = None) -> Verdict:
+    """Everything but the drawing files: derive, predict, judge.
+
+    Raises `InputError` for a job that cannot be judged, for example an angle "choose".
+    """
+    return prove(job, progress=progress).verdict
+
+
+def build(job: Job, out: str | Path = "out", *, keep_failed: bool = False, progress: Stage | None = None) -> Path:
+    """Verify the job and write its files into `out`/<job>; returns that folder.
+
+    When a rule failed only the verdict and the manifest are written, unless `keep_failed`.
+    Raises `InputError` (nothing written) or `MachineError` (nothing half-written).
+    """
+    return write(prove(job, progress=progress), Path(out), keep_failed=keep_failed, progress=progress)
+
+
+def prove(job: Job, *, progress: Stage | None = None) -> Proof:
+    """Derive what was left open, compute every beat, judge."""
+    from patterngen.beats.find import find_beats
+    from patterngen.beats.together import tones_together
+    from patterngen.colour.inks import InkStack
+    from patterngen.rules import _engine, _limits
+
+    tell = progress or _silent
+    _refuse_choose(job)
+    tell("deriving what was left open")
+    job = _engine.derive(job)
+    _refuse_impossible(job)
+    design = make_design(job)
+    screens = design.base.screens
+    colours = InkStack.of(job)
+    tell("finding beats")
+    beats, balance = find_beats(
+        screens=screens,
+        grids=design.grids,
+        colours=colours,
+        viewer=viewer_of(job),
+        sheet=job.sheet,
+        press=job.press,
+        overprints=job.overprints,
+    )
+    tell("judging")
+    together = tones_together(screens, job.overprints, job.sheet, window_mm=0.0)
+    printed = np.column_stack([screen.printed_tone(together[:, i]) for i, screen in enumerate(screens)])
+    evidence = Evidence(
+        design=design,
+        beats=beats,
+        balance=balance,
+        limits={**_limits.limits(job.press.process), **job.press.limits},
+        tones_together=together,
+        printed_together=printed,
+        luminance=colours.luminance(),
+        tone_extremes={screen.name: tone_extremes(screen) for screen in screens},
+    )
+    findings = _engine.judge(evidence)
+    verdict = Verdict(
+        job=job.name,
+        title=job.title,
+        status=overall(findings),
+        screens=tuple(_screen_facts(design, colours)),
+        beats=beats,
+        balance=balance,
+        findings=findings,
+        derived=job.derived,
+        notes={"remarks": list(job.remarks)},
+    )
+    return Proof(design, verdict, colours)
+
+
+def write(proof: Proof, out: Path, *, keep_failed: bool, progress: Stage | None = None) -> Path:
+    """Write the files of a proven job; the manifest comes last."""
+    from patterngen.writers import _files, manifest, pdf, svg
+    from patterngen.writers import verdict as verdict_writer
+
+    tell = progress or _silent
+    job = proof.design.job
+    with _files.job_folder(out, job.name) as folder:
+        if proof.verdict.status != "fail" or keep_failed:
+            tell("writing base.pdf")
+            folder.write("base.pdf", pdf.write(proof.design))
+            tell("writing base.svg")
+            folder.write("base.svg", svg.write(proof.design, rgb=proof.colours.rgb()))
+        folder.write("verdict.json", verdict_writer.dumps(proof.verdict))
+        folder.finish(manifest.dumps(job, folder.written))
+        return folder.path
+
+
+def make_design(job: Job) -> Design:
+    """Build the screens and grids of a fully derived job."""
+    screens = {
+        request.name: registry.load("patterngen.screens", request.kind).make(request) for request in job.screens
+    }
+    layers = tuple(
+        Layer(ink, tuple(screens[request.name] for request in job.screens if request.ink == ink.name))
+        for ink in job.inks
+    )
+    grids = tuple(registry.load("patterngen.grids", request.kind).make(request) for request in job.grids)
+    return Design(job, Sheet(tuple(layer for layer in layers if layer.screens)), grids)
+
+
+def viewer_of(job: Job) -> Viewer:
+    """The job's observer: two distances, two limits, one eye in the job's light."""
+    from patterngen.vision._luminance import luminance_cd_m2
+
+    eye = registry.load("patterngen.vision", job.viewing.eye)
+    luminance = luminance_cd_m2(light_lx=job.viewing.light_lx, paper_lab=job.paper_lab)
+
+    def sensitivity(cpd: Any) -> Any:
+        return eye.sensitivity(cpd, luminance_cd_m2=luminance)
+
+    viewing = job.viewing
+    return Viewer(viewing.distance_mm, viewing.far_mm, viewing.limit, viewing.limit_coarse, sensitivity)
+
+
+def overall(findings: tuple[Finding, ...]) -> Literal["pass", "warn", "fail"]:
+    """The verdict that the findings add up to; what is waived no longer fails, but warns."""
+    statuses = {finding.status for finding in findings}
+    if "fail" in statuses:
+        return "fail"
+    return "warn" if statuses & {"warn", "waived"} else "pass"

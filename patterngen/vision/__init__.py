@@ -1,0 +1,1 @@
+"""One published eye model a file, author and year in its name."""

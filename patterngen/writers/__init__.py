@@ -1,0 +1,1 @@
+"""What leaves the program: SVG, PDF, verdict, manifest."""

@@ -1,0 +1,17 @@
+"""Shared by all tests: where skips are not allowed, a skip fails the run."""
+
+from __future__ import annotations
+
+import os
+
+import pytest
+
+
+def pytest_sessionfinish(session: pytest.Session, exitstatus: int) -> None:
+    reporter = session.config.pluginmanager.get_plugin("terminalreporter")
+    if reporter is None or not os.environ.get("PATTERNGEN_NO_SKIP"):
+        return
+    skipped = reporter.stats.get("skipped", [])
+    if skipped and exitstatus == 0:
+        reporter.write_line(f"{len(skipped)} skipped where no skip is allowed", red=True)
+        session.exitstatus = 1
