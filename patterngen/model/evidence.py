@@ -30,3 +30,7 @@ class Evidence:
     """Per screen: (smallest non-zero, largest) plate tone that occurs."""
     shapes_drawn: Mapping[str, int | None]
     """Per screen: how many shapes it draws, None where that was not counted."""
+    eye_valid_cpd: tuple[float, float] | None = None
+    """Cycles per degree between which the eye model is published, None where that is not known."""
+    eye_takes_light: bool = True
+    """False for an eye model that knows no luminance."""

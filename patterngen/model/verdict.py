@@ -32,7 +32,8 @@ class Limit:
 class Measurement:
     """What a rule measured.  The engine works out margin and status, never the rule.
 
-    `bad_when` is "above" or "below" the limit.  `warn_at` is a second, milder limit.
+    `bad_when` is "above" or "below" the limit.  `warn_at` is a second, milder limit, and
+    `warn_source` its source where that is another one.  Without `measured` the status is `worst`.
     `applies` False makes it not-applicable with `message` as the reason.
     """
 
@@ -46,6 +47,7 @@ class Measurement:
     warn_at: float | None = None
     worst: Status = "fail"
     applies: bool = True
+    warn_source: Source | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,1 +1,1 @@
-"""One rule a file, named for the defect; limits by process in data files with a source for each number."""
+"""Rules: one a file, named for the defect it finds or the value it derives; limits by process as data."""
