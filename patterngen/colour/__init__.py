@@ -1,1 +1,1 @@
-"""Inks and overprints to XYZ and CIELAB; what screens show of them."""
+"""Inks and overprints as XYZ and CIELAB, and what a mixture of them reflects."""
