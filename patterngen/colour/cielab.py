@@ -110,5 +110,4 @@ def lab_to_hex(lab: ArrayLike) -> str:
     >>> lab_to_hex([100, 0, 0])
     '#ffffff'
     """
-    red, green, blue = (int(v) for v in np.rint(255.0 * lab_to_srgb(lab)))
-    return f"#{red:02x}{green:02x}{blue:02x}"
+    return "#" + bytes(np.rint(255.0 * lab_to_srgb(lab)).astype(np.uint8)).hex()

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from patterngen.colour.cielab import ciede2000, lab_to_xyz, xyz_to_lab
+from patterngen.colour.cielab import ciede2000, lab_to_hex, lab_to_xyz, xyz_to_lab
 from patterngen.model.job import Ink, Job, Lab, Overprint
 from patterngen.model.lattice import FloatArray
 
@@ -46,6 +46,10 @@ class InkStack:
         """Y of every solid relative to the paper, by the ink's name."""
         paper = float(_physical(self.paper_lab)[1])
         return {ink.name: float(_physical(ink.lab)[1]) / paper for ink in self.inks}
+
+    def rgb(self) -> dict[str, str]:
+        """Every solid as "#rrggbb" by the ink's name, for screens."""
+        return {ink.name: lab_to_hex(ink.lab) for ink in self.inks}
 
     def lab(self, xyz: FloatArray) -> FloatArray:
         """(n, 3) XYZ to CIELAB (D50)."""
