@@ -20,7 +20,7 @@ from patterngen.sources import source
 from patterngen.units import ANGLE, COLOUR_DIFFERENCE, LENGTH, RULING, SHARE, TONE_STEPS, Quantity, parse
 
 _EVERY = "_every"
-OWN_SOURCE = "own-limit"
+OWN_SOURCE = "preset-limit"
 
 
 @dataclass(frozen=True, slots=True)
@@ -107,10 +107,11 @@ def rows(process: str | None) -> tuple[LimitRow, ...]:
 
 @cache
 def _limits(process: str | None) -> dict[str, Limit]:
+    parts: list[tuple[str | None, str]] = [(None, "default")]
+    if process is not None:
+        parts.append((process, f"process {process}"))
     out: dict[str, Limit] = {}
-    for part, origin in ((None, "default"), (process, f"process {process}")):
-        if part is None and origin != "default":
-            continue
+    for part, origin in parts:
         for row in rows(part):
             kind = KINDS[row.name]
             value = parse(row.written, kind.quantity)
@@ -133,7 +134,11 @@ def in_force(job: Job) -> dict[str, Limit]:
     return {**_limits(job.press.process), **job.press.limits}
 
 
+def is_own(limit: Limit) -> bool:
+    """Whether the preset set this limit itself."""
+    return limit.origin != "default" and not limit.origin.startswith("process ")
+
+
 def worst(limit: Limit) -> Status:
     """How hard a breach counts: what is only practice or memory warns, unless a shop set it itself."""
-    own = limit.origin != "default" and not limit.origin.startswith("process ")
-    return "fail" if own or limit.source.standing in ("published", "derived") else "warn"
+    return "fail" if is_own(limit) or limit.source.standing in ("published", "derived") else "warn"

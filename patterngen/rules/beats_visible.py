@@ -1,0 +1,139 @@
+"""Beats that are seen where nobody wants them."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from patterngen.model.evidence import Evidence
+from patterngen.model.verdict import BeatTable, Measurement
+from patterngen.rules._angles import apart_deg
+from patterngen.rules._examples import dots, preset, usual_set
+from patterngen.rules._words import degrees, listed, rounded, width
+from patterngen.sources import source
+
+SUMMARY = "screens together make a pattern that is seen from where the print must look even"
+REASON = """Two or more screens make every sum and difference of their frequencies, and the coarse ones
+are seen as bands, patches or a coarse rosette.  At the reading distance the rosette that everybody
+accepts stands as far above threshold as a beat that spoils the job; at twice that distance dots and
+rosettes have melted and what is still seen is a fault.  So a beat is judged there: up to 1 mm it may
+reach four times the threshold of the eye model, longer ones may only reach the threshold itself."""
+MEASURES = """Contrast of each beat over the threshold contrast of the eye model, at the far distance of
+[viewing]; limit and limit_coarse stand there too.  Combinations that are not listed are bounded, and the
+bound is judged as well.  Contrast is that of infinite extent, with the screens exactly as designed."""
+SOURCES = ("calibration-on-practice", "barten-1999", "beat-period-formula")
+LIMITS: tuple[str, ...] = ()
+IDLE = "Fewer than two screens or grids: nothing can beat."
+
+EXAMPLE_PASS = preset(*usual_set())
+EXAMPLE_FAIL = preset(dots("Cyan", angle="15 deg"), dots("Black", angle="20 deg", tone="30 %"))
+
+_SAME = 0.02
+
+
+def measure(evidence: Evidence) -> Iterator[Measurement]:
+    """Each visible pattern, or else the strongest beat, in times the threshold at the far distance."""
+    table = evidence.beats
+    viewing = evidence.design.job.viewing
+    said = source("calibration-on-practice")
+    limits = np.where(table.period_mm <= 1.0 + 1e-12, viewing.limit, viewing.limit_coarse)
+    slow = ~np.isfinite(table.period_mm) | (table.period_mm > evidence.design.job.sheet.diagonal_mm)
+    seen = [row for row in range(len(table)) if table.grade[row] == "visible" and not slow[row]]
+    if len(table.slots) < 2:
+        return
+    for rows in _patterns(table, seen, limits):
+        row = rows[0]
+        yield Measurement(
+            float(table.visibility_far[row]),
+            float(limits[row]),
+            "times threshold",
+            listed(list(table.participants(row))),
+            f"{_sentence(table, rows, float(limits[row]))} {_advice(evidence, row)}",
+            said,
+        )
+    if seen:
+        return
+    calm = [row for row in range(len(table)) if not slow[row]]
+    if calm:
+        row = max(calm, key=lambda r: table.visibility_far[r] / limits[r])
+        who = listed(list(table.participants(row)))
+        yield Measurement(
+            float(table.visibility_far[row]),
+            float(limits[row]),
+            "times threshold",
+            who,
+            f"The strongest beat is that of {who}, {width(float(table.period_mm[row]))} wide: "
+            f"{rounded(float(table.visibility_far[row]))} times the threshold at {rounded(viewing.far_mm, digits=3)} mm, "
+            f"{rounded(float(table.visibility_far[row] / limits[row]))} of the limit.",
+            said,
+        )
+    yield Measurement(
+        table.bound_visibility_far,
+        min(viewing.limit, viewing.limit_coarse),
+        "times threshold",
+        "beats that are not listed",
+        f"No combination that is not listed can exceed {rounded(table.bound_visibility_far)} times the threshold "
+        f"at {rounded(viewing.far_mm, digits=3)} mm.",
+        said,
+        worst="warn",
+    )
+
+
+def _patterns(table: BeatTable, rows: list[int], limits: np.ndarray) -> list[list[int]]:
+    """Rows that a person sees as one pattern: same participants, period and strength; worst first."""
+    out: list[list[int]] = []
+    for row in sorted(rows, key=lambda r: -table.visibility_far[r] / limits[r]):
+        for pattern in out:
+            first = pattern[0]
+            alike = (
+                set(table.participants(first)) == set(table.participants(row))
+                and abs(table.period_mm[row] / table.period_mm[first] - 1) < _SAME
+                and abs(table.visibility_far[row] / table.visibility_far[first] - 1) < _SAME
+            )
+            if alike:
+                pattern.append(row)
+                break
+        else:
+            out.append([row])
+    return out
+
+
+def _sentence(table: BeatTable, rows: list[int], limit: float) -> str:
+    row = rows[0]
+    who = listed(list(table.participants(row)))
+    where = listed([degrees(_band_deg(table, r)) for r in sorted(rows, key=lambda r: _band_deg(table, r))])
+    over = float(table.visibility_far[row]) / limit
+    much = f"{rounded(over)} times over the limit" if over >= 1.05 else "just over the limit"
+    return f"{who} make bands {width(float(table.period_mm[row]))} wide, running at {where}, {much}."
+
+
+def _band_deg(table: BeatTable, row: int) -> float:
+    """Direction of the bands, at right angles to the frequency vector, 0 to 180."""
+    fx, fy = table.frequency_per_mm[row]
+    turned = float(np.rad2deg(np.arctan2(fy, fx)) + 90.0) % 180.0
+    return 0.0 if round(turned, 1) >= 180.0 else turned
+
+
+def _advice(evidence: Evidence, row: int) -> str:
+    """What to change in general."""
+    names = list(evidence.beats.participants(row))
+    grids = {grid.name for grid in evidence.design.grids}
+    of = {screen.name: screen for screen in evidence.design.base.screens}
+    inked = [of[name] for name in names if name in of]
+    if any(name in grids for name in names):
+        return (
+            f"{listed([n for n in names if n in grids])} takes part, which cannot be turned: "
+            f"turn {listed([screen.name for screen in inked])} by 7.5 degrees or change the ruling."
+        )
+    if len(inked) == 2:
+        a, b = inked
+        off = apart_deg(a.angle_deg, b.angle_deg, repeat_deg=min(a.symmetry_deg, b.symmetry_deg))
+        return (
+            f"They stand {degrees(off)} apart: bring them to 30 degrees (two inks alone: 45), "
+            "or give them clearly different rulings."
+        )
+    return (
+        "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 degrees at "
+        "one ruling, or move one of them well away, by angle or by ruling."
+    )
