@@ -56,7 +56,7 @@ class _Field:
         return self.schema()
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class QuantityField(_Field):
     """A number with its unit, between `low` and `high` (inner unit; `above` leaves the low end out).
 
@@ -129,7 +129,7 @@ class QuantityField(_Field):
         return f'"{plain(bound / self.quantity.units[unit])} {unit}"'
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class NumberField(_Field):
     """A bare number (no unit) between `low` and `high`; `whole` numbers only where asked."""
 
@@ -175,7 +175,7 @@ class NumberField(_Field):
         return text if re.fullmatch(r"-?\d{1,12}(\.\d{1,12})?", text, re.ASCII) else ""
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class TextField(_Field):
     """A line of text: no control characters, nothing that turns the reading direction, a limited length."""
 
@@ -211,7 +211,7 @@ _NAME = re.compile(r"[A-Za-z0-9](?:[A-Za-z0-9_.-]*[A-Za-z0-9_-])?", re.ASCII)
 _LONGEST_NAME = 64
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class NameField(_Field):
     """A name that may become part of a file name or an address: see `name_problem`."""
 
@@ -237,7 +237,7 @@ class NameField(_Field):
         }
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class ChoiceField(_Field):
     """One of a few words, which `options` lists when asked (so that a registry may grow)."""
 
