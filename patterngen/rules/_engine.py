@@ -91,9 +91,7 @@ def finding_of(rule: str, measurement: Measurement) -> Finding:
     limit, said = m.limit, m.source
     if not m.applies:
         status = "not-applicable"
-    elif m.measured is None:
-        status = m.worst
-    elif m.limit is not None and _margin(m, m.limit) < 0:
+    elif m.measured is None or (m.limit is not None and _margin(m, m.limit) < 0):
         status = m.worst
     elif m.warn_at is not None:
         limit, said = m.warn_at, m.warn_source or m.source
@@ -101,7 +99,9 @@ def finding_of(rule: str, measurement: Measurement) -> Finding:
     else:
         status = "pass"
     margin = None if m.measured is None or limit is None else _margin(m, limit)
-    return Finding(rule, status, m.measured, limit, margin, m.unit, said, m.where, " ".join(m.message.split()))
+    return Finding(
+        rule, status, m.measured, limit, margin, m.unit, said, m.where, " ".join(m.message.split())
+    )
 
 
 def _margin(measurement: Measurement, limit: float) -> float:
@@ -138,8 +138,11 @@ def _waived(rule: str, findings: list[Finding], waivers: Sequence[Waiver]) -> li
         return findings
     reason = "; ".join(reasons)
     if not any(finding.status == "fail" for finding in findings):
-        text = f"The preset waives {rule}, which did not fail: take the waiver out, or it will hide the next fault."
-        return [*findings, Finding(rule, "warn", None, None, None, "", source("own-rule"), "waive", text, reason)]
+        text = f"The preset waives {rule}, which did not fail; the waiver would hide the next fault: take it out."
+        return [
+            *findings,
+            Finding(rule, "warn", None, None, None, "", source("own-rule"), "waive", text, reason),
+        ]
     return [replace(f, status="waived", waiver=reason) if f.status == "fail" else f for f in findings]
 
 
@@ -151,7 +154,9 @@ def _shortened(findings: list[Finding]) -> list[Finding]:
         shown = mine[:SHOWN_PER_RULE]
         more = len(mine) - len(shown)
         if more:
-            shown[-1] = replace(shown[-1], message=f"{shown[-1].message} (And {more} more, none of them worse.)")
+            shown[-1] = replace(
+                shown[-1], message=f"{shown[-1].message} (And {more} more, none of them worse.)"
+            )
         out += shown
     return out
 
@@ -169,7 +174,10 @@ def why(name: str) -> str:
     Raises `InputError` with the nearest name.
     """
     module = registry.load(PACKAGE, name)
-    parts = [f"{name}: {module.SUMMARY}", textwrap.fill(" ".join(module.REASON.split()), width=_WIDTH, break_on_hyphens=False)]
+    parts = [
+        f"{name}: {module.SUMMARY}",
+        textwrap.fill(" ".join(module.REASON.split()), width=_WIDTH, break_on_hyphens=False),
+    ]
     if hasattr(module, "measure"):
         parts.append(_section("What is measured", [module.MEASURES]))
     if hasattr(module, "derive"):

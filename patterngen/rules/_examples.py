@@ -5,6 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+Example = tuple[dict[str, Any], dict[str, str]]
+"""A preset, and what a deriving rule must make of it: {path: value}."""
+
 INKS: Mapping[str, list[float]] = {
     "Cyan": [55, -37, -50],
     "Magenta": [48, 74, -3],
@@ -19,15 +22,29 @@ INKS: Mapping[str, list[float]] = {
 
 def dots(ink: str, **keys: Any) -> dict[str, Any]:
     """A dot screen of an ink at 150 lpi and 40 %, named after it; `keys` replace or add, None takes out."""
-    return _table({"name": ink.lower(), "ink": ink, "kind": "dots", "shape": "simpledot", "ruling": "150 lpi", "tone": "40 %"}, keys)
+    return _table(
+        {
+            "name": ink.lower(),
+            "ink": ink,
+            "kind": "dots",
+            "shape": "simpledot",
+            "ruling": "150 lpi",
+            "tone": "40 %",
+        },
+        keys,
+    )
 
 
 def lines(ink: str, **keys: Any) -> dict[str, Any]:
     """A line screen of an ink at 150 lpi and 40 %, named after it; `keys` replace or add, None takes out."""
-    return _table({"name": ink.lower(), "ink": ink, "kind": "lines", "ruling": "150 lpi", "tone": "40 %"}, keys)
+    return _table(
+        {"name": ink.lower(), "ink": ink, "kind": "lines", "ruling": "150 lpi", "tone": "40 %"}, keys
+    )
 
 
-def preset(*screens: Mapping[str, Any], press: Mapping[str, Any] | None = None, **tables: Any) -> dict[str, Any]:
+def preset(
+    *screens: Mapping[str, Any], press: Mapping[str, Any] | None = None, **tables: Any
+) -> dict[str, Any]:
     """A preset of 30 by 20 mm with those screens and the inks they name, in their order."""
     inks = dict.fromkeys(screen["ink"] for screen in screens)
     out: dict[str, Any] = {

@@ -25,7 +25,8 @@ def has_lattice(screen: ScreenRequest) -> bool:
 def settle(
     job: Job, screen: ScreenRequest, field: str, *, value: Any, shown: str, key: str, by: str, because: str
 ) -> Job:
-    """The job with `field` of one screen set to `value`; `shown` is how a preset would write it under `key`."""
+    """The job with `field` of one screen set to `value`; `shown` is how a preset would write it under "
+    "`key`."""
     path = f"screen.{screen.name}.{key}"
     screens = tuple(replace(s, **{field: value}) if s.name == screen.name else s for s in job.screens)
     return replace(

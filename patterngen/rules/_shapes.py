@@ -5,6 +5,6 @@ from __future__ import annotations
 AXIS_SHAPES = frozenset(
     {
         "double", "inverteddouble", "line", "linex", "liney", "ellipse", "ellipsea", "invertedellipsea",
-        "ellipseb", "ellipsec", "invertedellipsec", "rhomboid",
+        "ellipseb", "ellipsec", "invertedellipsec", "rhomboid", "diamond",
     }
 )  # fmt: skip

@@ -13,19 +13,27 @@ from patterngen.rules._examples import dots, preset
 from patterngen.rules._words import listed, rounded, width
 
 SUMMARY = "the mean colour moves with register, from sheet to sheet or across the sheet"
-REASON = """Where frequencies of several screens cancel, as in 15/45/75 at one ruling, there are no bands: the
-mean colour itself depends on how the screens lie on each other, dot-centred or clear-centred, and it
-moves whenever register moves.  Two inks at one angle and ruling are the same case, dot on dot or dot beside
-dot, only far stronger.  A beat slower than the sheet, and any beat over 2 mm, shows as shading: the eye
-model forgives slow shading, but it is colour that moves from sheet to sheet."""
-MEASURES = """CIEDE2000 between the extremes over all registers, for each group of screens in balance and for
-each beat longer than 2 mm.  What the press's register can reach of it and how slowly its angle and size errors
-make it drift stand beside it."""
-SOURCES = ("colour-swing-limits", "balance-drift", "trade-same-angle", "trade-rosette-centres", "amidror-stability")
+REASON = """Where frequencies of several screens cancel, as in 15/45/75 at one ruling, there are no
+bands: the mean colour itself depends on how the screens lie on each other, dot-centred or clear-centred,
+and it moves whenever register moves. Two inks at one angle and ruling are the same case, dot on dot or
+dot beside dot, only far stronger. A beat slower than the sheet, and any beat over 2 mm, shows as
+shading: the eye model forgives slow shading, but it is colour that moves from sheet to sheet."""
+MEASURES = """CIEDE2000 between the extremes over all registers, for each group of screens in balance and
+for each beat longer than 2 mm. What the press's register can reach of it and how slowly its angle and
+size errors make it drift stand beside it."""
+SOURCES = (
+    "colour-swing-limits",
+    "balance-drift",
+    "trade-same-angle",
+    "trade-rosette-centres",
+    "amidror-stability",
+)
 LIMITS = ("drift_warn", "drift_fail")
 IDLE = "Fewer than two screens: nothing can move against anything."
 
-EXAMPLE_PASS = preset(dots("Cyan", angle="45 deg", tone="20 %"), dots("Yellow", angle="0 deg"), dots("Black", angle="75 deg"))
+EXAMPLE_PASS = preset(
+    dots("Cyan", angle="45 deg", tone="20 %"), dots("Yellow", angle="0 deg"), dots("Black", angle="75 deg")
+)
 EXAMPLE_FAIL = preset(dots("Magenta", angle="45 deg"), dots("Black", angle="45 deg"))
 
 
@@ -77,18 +85,26 @@ def _balance_sentence(evidence: Evidence, balance: Balance) -> str:
     press = evidence.design.job.press
     state = "are in exact balance" if balance.exact else _nearly(balance)
     dark, _, light = balance.mean_y
-    such = "dot beside dot against dot on dot" if len(balance.names) == 2 else "dot-centred against clear-centred"
+    such = (
+        "dot beside dot against dot on dot"
+        if len(balance.names) == 2
+        else "dot-centred against clear-centred"
+    )
     parts = [
-        f"{who} {state}: as register moves ({such}), the colour moves by {rounded(balance.colour_swing)} CIEDE2000; "
-        f"Y is {rounded(dark, digits=3)} at the darkest register and {rounded(light, digits=3)} at the lightest."
+        f"{who} {state}: as register moves ({such}), the colour moves by {rounded(balance.colour_swing)} "
+        "CIEDE2000; "
+        f"Y is {rounded(dark, digits=3)} at the darkest register and {rounded(light, digits=3)} at the "
+        "lightest."
     ]
     if press.register_mm > 0:
         parts.append(
-            f"The press's register of {width(press.register_mm)} reaches {rounded(balance.colour_swing_register)} of it."
+            f"The press's register of {width(press.register_mm)} reaches "
+            f"{rounded(balance.colour_swing_register)} of it."
         )
     if math.isfinite(balance.drift_period_mm):
         parts.append(
-            f"Its angle and size errors turn this into shading with waves of {width(balance.drift_period_mm)} or longer."
+            "Its angle and size errors turn this into shading with waves of "
+            f"{width(balance.drift_period_mm)} or longer."
         )
     else:
         parts.append("State angle_error and size_error in [press] to learn how it drifts across a sheet.")

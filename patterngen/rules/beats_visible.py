@@ -15,13 +15,13 @@ from patterngen.sources import source
 
 SUMMARY = "screens together make a pattern that is seen from where the print must look even"
 REASON = """Two or more screens make every sum and difference of their frequencies, and the coarse ones
-are seen as bands, patches or a coarse rosette.  At the reading distance the rosette that everybody
+are seen as bands, patches or a coarse rosette. At the reading distance the rosette that everybody
 accepts stands as far above threshold as a beat that spoils the job; at twice that distance dots and
-rosettes have melted and what is still seen is a fault.  So a beat is judged there: up to 1 mm it may
+rosettes have melted and what is still seen is a fault. So a beat is judged there: up to 1 mm it may
 reach four times the threshold of the eye model, longer ones may only reach the threshold itself."""
 MEASURES = """Contrast of each beat over the threshold contrast of the eye model, at the far distance of
-[viewing]; limit and limit_coarse stand there too.  Combinations that are not listed are bounded, and the
-bound is judged as well.  Contrast is that of infinite extent, with the screens exactly as designed."""
+[viewing]; limit and limit_coarse stand there too. Combinations that are not listed are bounded, and the
+bound is judged as well. Contrast is that of infinite extent, with the screens exactly as designed."""
 SOURCES = ("calibration-on-practice", "barten-1999", "beat-period-formula")
 LIMITS: tuple[str, ...] = ()
 IDLE = "Fewer than two screens or grids: nothing can beat."
@@ -64,7 +64,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
             "times threshold",
             who,
             f"The strongest beat is that of {who}, {width(float(table.period_mm[row]))} wide: "
-            f"{rounded(float(table.visibility_far[row]))} times the threshold at {rounded(viewing.far_mm, digits=3)} mm, "
+            f"{rounded(float(table.visibility_far[row]))} times the threshold at "
+            f"{rounded(viewing.far_mm, digits=3)} mm, "
             f"{rounded(float(table.visibility_far[row] / limits[row]))} of the limit.",
             said,
         )
@@ -73,7 +74,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         min(viewing.limit, viewing.limit_coarse),
         "times threshold",
         "beats that are not listed",
-        f"No combination that is not listed can exceed {rounded(table.bound_visibility_far)} times the threshold "
+        f"No combination that is not listed can exceed {rounded(table.bound_visibility_far)} times the "
+        "threshold "
         f"at {rounded(viewing.far_mm, digits=3)} mm.",
         said,
         worst="warn",
@@ -134,6 +136,7 @@ def _advice(evidence: Evidence, row: int) -> str:
             "or give them clearly different rulings."
         )
     return (
-        "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 degrees at "
+        "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 "
+        "degrees at "
         "one ruling, or move one of them well away, by angle or by ruling."
     )

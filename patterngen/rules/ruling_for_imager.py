@@ -7,23 +7,24 @@ from collections import Counter
 
 from patterngen.model.job import Job, ScreenRequest
 from patterngen.rules import _limits
-from patterngen.rules._examples import dots, preset
+from patterngen.rules._examples import Example, dots, preset
 from patterngen.rules._settle import has_lattice, is_open, settle
 from patterngen.rules._words import rounded
 from patterngen.units import RESOLUTION, RULING, parse
 
 SUMMARY = "a ruling left open is that of the other screens, or the usual one that the imager can still draw"
-REASON = """The usual angles presume one ruling for all inks, so an open ruling follows those that are given.
-Where none is given it is the ruling in everyday use for the process, unless the imager's pixels are too
-coarse for it: a cell of (imager / ruling)^2 pixels gives that many tones and the paper, and at least 150 steps are
-wanted."""
-DERIVES = """`ruling` of every screen with a lattice: the commonest of the given ones of its kind (the coarser
-of equals), else the smaller of the usual ruling and imager / sqrt(steps - 1), in whole lines per inch."""
+REASON = """The usual angles presume one ruling for all inks, so an open ruling follows those that are
+given. Where none is given it is the ruling in everyday use for the process, unless the imager's pixels
+are too coarse for it: a cell of (imager / ruling)^2 pixels gives that many tones and the paper, and at
+least 150 steps are wanted."""
+DERIVES = """`ruling` of every screen with a lattice: the commonest of the given ones of its kind (the
+coarser of equals), else the smaller of the usual ruling and imager / sqrt(steps - 1), in whole lines per
+inch."""
 SOURCES = ("tone-steps-formula", "grey-levels", "trade-tone-steps", "trade-rulings-by-process")
 LIMITS = ("ruling_usual", "tone_steps")
 AFTER: tuple[str, ...] = ()
 
-EXAMPLES = (
+EXAMPLES: tuple[Example, ...] = (
     (preset(dots("Cyan", ruling=None, angle="45 deg")), {"screen.cyan.ruling": "150 lpi"}),
     (
         preset(dots("Cyan", ruling=None, angle="45 deg"), press={"imager": "1200 dpi"}),
@@ -67,7 +68,10 @@ def _ruling(job: Job, screen: ScreenRequest) -> tuple[float, str]:
     given = Counter(s.ruling_per_mm for s in job.screens if s.kind == screen.kind and s.ruling_per_mm)
     if given:
         value = min(given, key=lambda ruling: (-given[ruling], ruling))
-        return value, "The other screens of its kind have this ruling, and the usual angles presume one for all."
+        return (
+            value,
+            "The other screens of its kind have this ruling, and the usual angles presume one for all.",
+        )
     limits = _limits.in_force(job)
     usual, steps = limits["ruling_usual"], limits["tone_steps"].value
     usual_lpi = float(round(usual.value / _LPI))
@@ -82,7 +86,8 @@ def _ruling(job: Job, screen: ScreenRequest) -> tuple[float, str]:
     if usual_lpi <= most_lpi:
         return (
             usual_lpi * _LPI,
-            f"It is {of}; {dpi} dpi could draw {rounded(steps, digits=4)} tone steps up to {math.floor(most_lpi)} lpi.",
+            f"It is {of}; {dpi} dpi could draw {rounded(steps, digits=4)} tone steps up to "
+            f"{math.floor(most_lpi)} lpi.",
         )
     return (
         math.floor(most_lpi) * _LPI,

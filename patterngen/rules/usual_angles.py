@@ -9,23 +9,23 @@ from dataclasses import dataclass
 from patterngen.model.job import Ink, Job, ScreenRequest
 from patterngen.rules import _limits
 from patterngen.rules._angles import apart_deg, lightest_ink
-from patterngen.rules._examples import dots, preset
+from patterngen.rules._examples import Example, dots, preset
 from patterngen.rules._settle import has_lattice, is_open, settle
 from patterngen.rules._shapes import AXIS_SHAPES
 from patterngen.rules._words import degrees, rounded
 from patterngen.units import plain
 
 SUMMARY = "angles left open are the usual ones: the dominant ink at 45, the lightest beside its neighbours"
-REASON = """Drawing inks stand 30 degrees apart, and only three do so within the 90 degrees after which dots
-repeat; the lightest ink, whose beats have the least contrast, goes between two of them at 15.  The
-most important ink takes 45, the direction that the eye notices least.  Dots with an axis repeat every 180
-degrees and stand 60 apart.  A fifth ink finds no place: it takes the angle of the ink it is seldom printed
-with, which is a stopgap; `patterngen angles` searches properly."""
-DERIVES = """`angle` of every screen with a lattice, one angle an ink.  The dominant ink is the darkest, unless
-another carries twice as much (mean tone times darkness on this paper); it gets 45 (135 for dots
-with an axis).  Then the others in the order of the ink tables: 15, then 75; the lightest ink of four 0.  Two inks
-stand at 45 and 75, one at 45.  Where angles are given, the whole set is turned to fit them, and where it
-does not fit, each open ink goes where it stands furthest from the others."""
+REASON = """Drawing inks stand 30 degrees apart, and only three do so within the 90 degrees after which
+dots repeat; the lightest ink, whose beats have the least contrast, goes between two of them at 15. The
+most important ink takes 45, the direction that the eye notices least. Dots with an axis repeat every 180
+degrees and stand 60 apart. A fifth ink finds no place: it takes the angle of the ink it is seldom
+printed with, which is a stopgap; `patterngen angles` searches properly."""
+DERIVES = """`angle` of every screen with a lattice, one angle an ink. The dominant ink is the darkest,
+unless another carries twice as much (mean tone times darkness on this paper); it gets 45 (135 for dots
+with an axis). Then the others in the order of the ink tables: 15, then 75; the lightest ink of four 0.
+Two inks stand at 45 and 75, one at 45. Where angles are given, the whole set is turned to fit them, and
+where it does not fit, each open ink goes where it stands furthest from the others."""
 SOURCES = (
     "trade-classic-angles",
     "din-16547",
@@ -50,14 +50,16 @@ def _open(ink: str, **keys: object) -> dict[str, object]:
 
 
 _FOUR = tuple(_open(ink) for ink in ("Cyan", "Magenta", "Yellow", "Black"))
-_SEVEN = tuple(_open(ink, tone="20 %") for ink in ("Cyan", "Magenta", "Yellow", "Black", "Orange", "Green", "Violet"))
+_SEVEN = tuple(
+    _open(ink, tone="20 %") for ink in ("Cyan", "Magenta", "Yellow", "Black", "Orange", "Green", "Violet")
+)
 
 
 def _angles(**angles: str) -> dict[str, str]:
     return {f"screen.{name}.angle": f"{angle} deg" for name, angle in angles.items()}
 
 
-EXAMPLES = (
+EXAMPLES: tuple[Example, ...] = (
     (preset(_open("Black")), _angles(black="45")),
     (preset(_open("Orange"), _open("Black")), _angles(orange="75", black="45")),
     (preset(*_FOUR[:3]), _angles(cyan="15", magenta="45", yellow="75")),
@@ -67,7 +69,12 @@ EXAMPLES = (
         _angles(cyan="15", magenta="75", yellow="0", black="135"),
     ),
     (
-        preset(_open("Cyan", tone="5 %"), _open("Magenta", tone="70 %"), _open("Yellow", tone="60 %"), _open("Black", tone="3 %")),
+        preset(
+            _open("Cyan", tone="5 %"),
+            _open("Magenta", tone="70 %"),
+            _open("Yellow", tone="60 %"),
+            _open("Black", tone="3 %"),
+        ),
         _angles(cyan="15", magenta="45", yellow="0", black="75"),
     ),
     (
@@ -75,7 +82,9 @@ EXAMPLES = (
         _angles(cyan="15", magenta="75", yellow="0", black="45", orange="15", green="75", violet="0"),
     ),
     (
-        preset(dots("Cyan", angle="22.5 deg"), _open("Magenta"), _open("Yellow"), dots("Black", angle="52.5 deg")),
+        preset(
+            dots("Cyan", angle="22.5 deg"), _open("Magenta"), _open("Yellow"), dots("Black", angle="52.5 deg")
+        ),
         _angles(magenta="82.5", yellow="7.5"),
     ),
 )
@@ -192,7 +201,8 @@ def _order(plan: _Plan) -> list[str]:
 
 
 def _turned(plan: _Plan, given: list[float]) -> tuple[float, ...]:
-    """The slots, turned as a whole so that as many given angles as possible stand on one (least turn of equals)."""
+    """The slots, turned as a whole so that as many given angles as possible stand on one (least turn of "
+    "equals)."""
     turns = {0.0}
     for angle in given:
         turns |= {_folded(angle - slot, plan.repeat_deg) for slot in plan.slots}
@@ -220,22 +230,32 @@ def _place(
     order = slots if ink != plan.lightest else slots[::-1]
     if ink not in (plan.dominant, plan.lightest):
         # the dominant ink's slot is left to it, also while it waits
-        order = (*slots[1:3], slots[0], slots[3]) if len(plan.inks) != 2 else (slots[2], slots[1], slots[0], slots[3])
+        order = (
+            (*slots[1:3], slots[0], slots[3])
+            if len(plan.inks) != 2
+            else (slots[2], slots[1], slots[0], slots[3])
+        )
     for angle in order:
         if plan.room(ink, angle, taken) >= -_FIT_DEG:
             return angle, _reason(plan, ink, angle, slots)
     partner = _seldom_met(plan, ink, taken) if len(plan.inks) > 4 else None
     if partner is not None:
         return taken[partner][0], (
-            f"There is no fifth angle {degrees(plan.apart_deg)} from the others; {ink} takes that of {partner}, "
-            "its opposite in hue, with which it is seldom printed. That is doubtful: `patterngen angles` searches properly, "
+            f"There is no fifth angle {degrees(plan.apart_deg)} from the others; {ink} takes that of "
+            f"{partner}, "
+            "its opposite in hue, with which it is seldom printed. That is doubtful: `patterngen angles` "
+            "searches properly, "
             "and [[overprint]] with never = true says which inks do not meet."
         )
     widest = int(2 * plan.repeat_deg)
     angle = max((0.5 * i for i in range(widest)), key=lambda a: (plan.room(ink, a, taken), -a))
     near = plan.room(ink, angle, taken)
     short = f"{rounded(-near, digits=3)} degrees less than wanted" if near < -1e-9 else "as far as wanted"
-    return angle, f"The given angles leave no usual one free; here {ink} stands furthest from its nearest neighbour, {short}."
+    return (
+        angle,
+        f"The given angles leave no usual one free; here {ink} stands furthest from its nearest neighbour, "
+        f"{short}.",
+    )
 
 
 def _seldom_met(plan: _Plan, ink: str, taken: Mapping[str, tuple[float, ...]]) -> str | None:
@@ -244,13 +264,15 @@ def _seldom_met(plan: _Plan, ink: str, taken: Mapping[str, tuple[float, ...]]) -
     first = [name for name in _order(plan)[:4] if name in taken and name != ink]
     crowd = {name: sum(taken[name][0] in angles for angles in taken.values()) for name in first}
     if math.hypot(*own.lab[1:]) < _GREY_CHROMA:
-        # two grey-like inks must not share an angle, and a grey has no opposite: the most colourful ink is left
+        # two grey-like inks must not share an angle, and a grey has no opposite: it joins a colourful ink
         first = [name for name in first if math.hypot(*_lab(plan, name)[1:]) >= _GREY_CHROMA]
         return min(first, key=lambda name: (crowd[name], -math.hypot(*_lab(plan, name)[1:])), default=None)
 
     def opposition(name: str) -> float:
         a, b = _lab(plan, name)[1:]
-        return (a * own.lab[1] + b * own.lab[2]) / max(math.hypot(a, b), _GREY_CHROMA) / math.hypot(*own.lab[1:])
+        return (
+            (a * own.lab[1] + b * own.lab[2]) / max(math.hypot(a, b), _GREY_CHROMA) / math.hypot(*own.lab[1:])
+        )
 
     return min(first, key=lambda name: (crowd[name], opposition(name)), default=None)
 
@@ -264,7 +286,11 @@ def _reason(plan: _Plan, ink: str, angle: float, slots: tuple[float, ...]) -> st
         return "The eye notices 45 degrees least, and there is no other ink to keep clear of."
     turned = ", in a set turned to fit the given angles" if slots != plan.slots else ""
     if ink == plan.dominant and angle == slots[0]:
-        return f"{ink} carries most of the picture and takes {plain(angle)}{turned}, where the eye notices a screen least."
+        return f"{ink} carries most of the picture and takes {plain(angle)}, the place of the dominant ink{turned}."
     if ink == plan.lightest:
-        return f"{ink} is the lightest ink and may stand {degrees(plan.apart_light_deg)} from its neighbours{turned}."
-    return f"{ink} is a drawing ink and stands at least {degrees(plan.apart_deg)} from the other drawing inks that it meets{turned}."
+        return (
+            f"{ink} is the lightest ink: {degrees(plan.apart_light_deg)} from its neighbours will do{turned}."
+        )
+    return (
+        f"{ink} is a drawing ink, {degrees(plan.apart_deg)} or more from every other that it meets{turned}."
+    )
