@@ -3,7 +3,7 @@
 XYZ is relative: the perfect diffuser has Y = 1 (not 100, the trap of this field).  Every
 function takes arrays whose last axis holds the three components.
 
-Sources: CIE 15:2004 and ISO/CIE 11664-4 for CIELAB; Sharma, Wu & Dalal 2005 for CIEDE2000
+Sources: CIE 015:2018 and ISO/CIE 11664-4 for CIELAB; Sharma, Wu & Dalal 2005 for CIEDE2000
 as it is computed; IEC 61966-2-1 for sRGB; the Bradford matrix of ICC.1 for the adaptation.
 """
 
@@ -20,7 +20,7 @@ def _white(x: float, y: float) -> FloatArray:
     return np.array([x / y, 1.0, (1.0 - x - y) / y])
 
 
-D50 = _white(0.34567, 0.35850)
+D50 = _white(0.3457, 0.3585)
 """White of print: CIE illuminant D50, 2 degrees."""
 D65 = _white(0.3127, 0.3290)
 """White of sRGB."""
@@ -38,7 +38,7 @@ def lab_to_xyz(lab: ArrayLike) -> FloatArray:
     """CIELAB (..., 3) to XYZ (..., 3), the perfect diffuser at Y = 1.
 
     >>> lab_to_xyz([100, 0, 0]).round(4).tolist()
-    [0.9642, 1.0, 0.8252]
+    [0.9643, 1.0, 0.8251]
     """
     lightness, a, b = np.moveaxis(np.asarray(lab, dtype=float), -1, 0)
     y = (lightness + 16.0) / 116.0
