@@ -1,1 +1,1 @@
-"""Which combinations of screens are coarse enough to matter, and how strong they are."""
+"""Which superpositions of screens are coarse enough to matter, and how strong they are."""

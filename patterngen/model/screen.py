@@ -85,6 +85,10 @@ class Grid(ABC):
     def coefficients(self, *, reach: int) -> ComplexArray:
         """As for a screen, divided by the mean, so that order zero is 1."""
 
+    def tail(self, *, radius: float) -> float:
+        """A bound: no coefficient of order |k| >= radius is larger; 1 holds for anything that only transmits."""
+        return 1.0
+
     @abstractmethod
     def transfer(self, frequency_per_mm: FloatArray) -> FloatArray:
         """(n, 2) frequencies to (n,) amplitude factors of what the grid does after sampling."""
