@@ -141,12 +141,13 @@ def _plain_words(kind: str, context: Mapping[str, Any], value: object, message: 
     return message[:1].lower() + message[1:], "", ""
 
 
-def _models_in(annotation: Any) -> list[type[BaseModel]]:
+def models_in(annotation: Any) -> list[type[BaseModel]]:
+    """The models that an annotation is made of."""
     from typing import get_args
 
     if isinstance(annotation, type) and issubclass(annotation, BaseModel):
         return [annotation]
-    return [model for part in get_args(annotation) for model in _models_in(part)]
+    return [model for part in get_args(annotation) for model in models_in(part)]
 
 
 def _keys_at(model: type[BaseModel], place: list[int | str]) -> list[str]:
@@ -154,7 +155,7 @@ def _keys_at(model: type[BaseModel], place: list[int | str]) -> list[str]:
     here: list[type[BaseModel]] = [model]
     for part in place:
         if isinstance(part, str):
-            here = [inner for m in here for name, info in m.model_fields.items() if part in (name, info.alias) for inner in _models_in(info.annotation)]
+            here = [inner for m in here for name, info in m.model_fields.items() if part in (name, info.alias) for inner in models_in(info.annotation)]
     return [info.alias or name for m in here for name, info in m.model_fields.items()]
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,8 +21,8 @@ class Area:
     """A box in mm, or outlines with holes.
 
     `box_mm` is (x low, y low, x high, y high).  `rings` is None for the box itself,
-    else one (n, 2) array a ring in mm (outlines counter-clockwise, holes clockwise,
-    already repaired and cut to the sheet with its bleed).
+    else one (n, 2) array a ring in mm (outlines counter-clockwise, each followed by its
+    holes, clockwise; already repaired and cut to the sheet with its bleed).
     `label` says in words what it is ("the sheet", "art/panel.svg").
     """
 
@@ -36,12 +36,16 @@ class Area:
 
         if self.rings is None:
             return shapely.box(*self.box_mm)
-        holes = [shapely.LinearRing(r) for r in self.rings if not _is_ccw(r)]
-        shells = [shapely.Polygon(r) for r in self.rings if _is_ccw(r)]
-        out: Any = shapely.union_all(shells)
-        if holes:
-            out = out.difference(shapely.union_all([shapely.Polygon(h) for h in holes]))
-        return out
+        # each hole is cut from its own outline only: there may be an island in it
+        holes: list[list[FloatArray]] = []
+        shells: list[FloatArray] = []
+        for ring in self.rings:
+            if _is_ccw(ring):
+                shells.append(ring)
+                holes.append([])
+            else:
+                holes[-1].append(ring)
+        return shapely.union_all([shapely.Polygon(s, h) for s, h in zip(shells, holes, strict=True)])
 
     def area_mm2(self) -> float:
         """Area in mm2."""
@@ -106,6 +110,13 @@ class ToneField:
         i1, j1 = np.minimum(i + 1, columns - 1), np.minimum(j + 1, rows - 1)
         tone = (1 - b) * ((1 - a) * values[j, i] + a * values[j, i1]) + b * ((1 - a) * values[j1, i] + a * values[j1, i1])
         return np.where(inside, tone, 0.0)
+
+    def averaged(self, *, size_mm: float) -> ToneField:
+        """The same field, its picture averaged once for `size_mm`, for whoever asks `at` many times."""
+        if self.constant is not None:
+            return self
+        values, box_mm = self.reduced(size_mm)
+        return ToneField(values=values, box_mm=box_mm, label=self.label)
 
     def reduced(self, size_mm: float) -> tuple[NDArray[np.float32], tuple[float, float, float, float]]:
         """(values, box_mm) of the picture averaged in whole blocks to about half of `size_mm`."""
