@@ -138,7 +138,7 @@ def _waived(rule: str, findings: list[Finding], waivers: Sequence[Waiver]) -> li
         return findings
     reason = "; ".join(reasons)
     if not any(finding.status == "fail" for finding in findings):
-        text = f"The preset waives {rule}, which did not fail; the waiver would hide the next fault: take it out."
+        text = f"{rule} is waived and did not fail: take the waiver out, it would hide the next fault."
         return [
             *findings,
             Finding(rule, "warn", None, None, None, "", source("own-rule"), "waive", text, reason),
@@ -174,10 +174,7 @@ def why(name: str) -> str:
     Raises `InputError` with the nearest name.
     """
     module = registry.load(PACKAGE, name)
-    parts = [
-        f"{name}: {module.SUMMARY}",
-        textwrap.fill(" ".join(module.REASON.split()), width=_WIDTH, break_on_hyphens=False),
-    ]
+    parts = [_indented(f"{name}: {module.SUMMARY}", 0), _indented(module.REASON, 0, hang=0)]
     if hasattr(module, "measure"):
         parts.append(_section("What is measured", [module.MEASURES]))
     if hasattr(module, "derive"):
@@ -198,12 +195,12 @@ def _section(title: str, texts: Sequence[str]) -> str:
     return "\n".join([title, *wrapped])
 
 
-def _indented(text: str, by: int) -> str:
+def _indented(text: str, by: int, *, hang: int = 2) -> str:
     return textwrap.fill(
         " ".join(text.split()),
         width=_WIDTH,
         initial_indent=" " * by,
-        subsequent_indent=" " * (by + 2),
+        subsequent_indent=" " * (by + hang),
         break_on_hyphens=False,
     )
 

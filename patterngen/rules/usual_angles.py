@@ -240,12 +240,15 @@ def _place(
             return angle, _reason(plan, ink, angle, slots)
     partner = _seldom_met(plan, ink, taken) if len(plan.inks) > 4 else None
     if partner is not None:
+        grey = math.hypot(*_lab(plan, ink)[1:]) < _GREY_CHROMA
+        beside = (
+            "a colour that hides it best" if grey else "its opposite in hue, with which it is seldom printed"
+        )
         return taken[partner][0], (
-            f"There is no fifth angle {degrees(plan.apart_deg)} from the others; {ink} takes that of "
-            f"{partner}, "
-            "its opposite in hue, with which it is seldom printed. That is doubtful: `patterngen angles` "
-            "searches properly, "
-            "and [[overprint]] with never = true says which inks do not meet."
+            f"No angle is left {degrees(plan.apart_deg)} from the others; "
+            f"{ink} shares that of {partner}, {beside}. "
+            "That is doubtful: `patterngen angles` searches properly, "
+            "and an [[overprint]] with never = true says which inks do not meet."
         )
     widest = int(2 * plan.repeat_deg)
     angle = max((0.5 * i for i in range(widest)), key=lambda a: (plan.room(ink, a, taken), -a))
@@ -286,7 +289,7 @@ def _reason(plan: _Plan, ink: str, angle: float, slots: tuple[float, ...]) -> st
         return "The eye notices 45 degrees least, and there is no other ink to keep clear of."
     turned = ", in a set turned to fit the given angles" if slots != plan.slots else ""
     if ink == plan.dominant and angle == slots[0]:
-        return f"{ink} carries most of the picture and takes {plain(angle)}, the place of the dominant ink{turned}."
+        return f"{ink} carries most of the picture: {plain(angle)} is the dominant ink's place{turned}."
     if ink == plan.lightest:
         return (
             f"{ink} is the lightest ink: {degrees(plan.apart_light_deg)} from its neighbours will do{turned}."
