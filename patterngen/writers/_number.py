@@ -79,7 +79,8 @@ def lookup(texts: list[bytes], index: NDArray[Any]) -> TextColumn:
     """A column that takes its texts from a short list."""
     width = max(1, max(len(text) for text in texts))
     table = np.frombuffer(b"".join(text.ljust(width, b"\0") for text in texts), dtype=f"V{width}")
-    return table[index]
+    column: TextColumn = table[index]
+    return column
 
 
 def rows(*columns: bytes | TextColumn) -> bytes:

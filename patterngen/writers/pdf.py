@@ -24,6 +24,7 @@ from patterngen.model.design import Design, Layer
 from patterngen.model.job import Job, Lab
 from patterngen.model.lattice import FloatArray, Lattice
 from patterngen.model.shapes import Contour, Outline, Polygons, Stamps
+from patterngen.writers._curves import content, pieces
 from patterngen.writers._integers import whole
 from patterngen.writers._number import integers, lookup, number, numbers, rows
 from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
@@ -137,7 +138,7 @@ class _SheetWriter:
         self.pdf, self.page, self.paper_lab = pdf, page, paper_lab
         self.streams: list[pikepdf.Stream] = []
         self.groups: list[pikepdf.Object] = []
-        self.forms: dict[tuple[object, ...], int] = {}
+        self.forms: dict[tuple[bytes, int], int] = {}
         resources = pdf.pages[0].Resources
         for key in ("/ColorSpace", "/ExtGState", "/Properties", "/XObject"):
             if key not in resources:
@@ -227,7 +228,7 @@ class _SheetWriter:
 
     def _form(self, outline: Outline, length: int) -> int:
         """The number of the form that stamps an outline `length` times along a row."""
-        key = (*(c.start.tobytes() + c.bends.tobytes() for c in outline.contours), length)
+        key = (content(outline), length)
         if key in self.forms:
             return self.forms[key]
         if length == 1:
@@ -278,9 +279,14 @@ def _contour(contour: Contour) -> bytes:
     def point(uv: FloatArray) -> str:
         return numbers(*np.round(uv, _CELL_DIGITS))
 
-    text = [f"{point(contour.start)} m"]
-    for (a, b, end), straight in zip(contour.bends, contour.straight, strict=True):
-        text.append(f"{point(end)} l" if straight else f"{point(a)} {point(b)} {point(end)} c")
+    here = contour.start
+    text = [f"{point(here)} m"]
+    for bend, straight in zip(contour.bends, contour.straight, strict=True):
+        if straight:
+            text.append(f"{point(bend[2])} l")
+        else:
+            text += [f"{point(a)} {point(b)} {point(end)} c" for a, b, end in pieces(here, bend)]
+        here = bend[2]
     return (" ".join(text) + " h\n").encode()
 
 

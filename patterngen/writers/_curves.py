@@ -1,0 +1,93 @@
+"""Curves made easy on readers.
+
+Readers turn a curve into a few straight pieces that lie inside it: at 2400 dpi a small dot
+drawn as four arcs comes out one to two and a half per cent too light in common ones.  So
+curves are handed over in pieces too short to lose anything, or as chords that enclose
+exactly the area of the curve.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from patterngen.model.lattice import FloatArray
+from patterngen.model.shapes import Contour, Outline
+
+_MOST_TURN_RAD = np.pi / 8 + 1e-9
+_SAGITTA_MM = 6e-4
+"""Height of a curve over its chord; once the area is made good no point is off by more than two thirds of it."""
+
+
+def content(outline: Outline) -> bytes:
+    """What makes an outline the same as another one."""
+    return b"|".join(c.start.tobytes() + c.bends.tobytes() for c in outline.contours)
+
+
+def pieces(start: FloatArray, bend: FloatArray) -> FloatArray:
+    """The same cubic (3, 2) from `start` in n cubics (n, 3, 2), none turning by more than 22.5 degrees."""
+    corners = np.concatenate([start[None, :], bend])
+    legs = np.diff(corners, axis=0)
+    legs = legs[np.hypot(legs[:, 0], legs[:, 1]) > 0]
+    if len(legs) < 2:
+        return bend[None]
+    cross = legs[:-1, 0] * legs[1:, 1] - legs[:-1, 1] * legs[1:, 0]
+    turn = np.abs(np.arctan2(cross, np.sum(legs[:-1] * legs[1:], axis=1))).sum()
+    n = max(1, int(np.ceil(turn / _MOST_TURN_RAD)))
+    u = np.arange(n + 1)[:, None] / n
+    at, slope = _point(corners, u), _slope(corners, u) / (3 * n)
+    return np.stack([at[:-1] + slope[:-1], at[1:] - slope[1:], at[1:]], axis=1)
+
+
+def chords(contour: Contour, *, steps_mm: FloatArray) -> FloatArray:
+    """A contour as an open ring (n, 2) of straight pieces with the contour's own area.
+
+    `steps_mm` (2, 2) are the lattice steps that the contour is measured in.  Ends of
+    straight pieces stay where they are; the other corners move outwards by up to two
+    thirds of the height of the curve over its chord (0.4 micrometres).
+    """
+    corner: list[FloatArray] = []
+    height: list[FloatArray] = []
+    here = contour.start
+    for bend, straight in zip(contour.bends, contour.straight, strict=True):
+        points = np.concatenate([here[None, :], bend])
+        n = 1
+        if not straight:
+            second = np.abs(np.diff(points, n=2, axis=0) @ steps_mm)
+            n = max(1, int(np.ceil(np.sqrt(0.75 * np.hypot(second[:, 0], second[:, 1]).max() / _SAGITTA_MM))))
+        u = np.arange(n + 1)[:, None] / n
+        at = _point(points, u)
+        corner.append(at[:-1])
+        height.append(
+            np.zeros((1, 2)) if straight else _point(points, u[:-1] + 0.5 / n) - 0.5 * (at[:-1] + at[1:])
+        )
+        here = bend[2]
+    ring, over = np.concatenate(corner), np.concatenate(height)
+    before = np.roll(over, 1, axis=0)
+    free = np.any(over != 0, axis=1) & np.any(before != 0, axis=1)
+    outward = np.where(free[:, None], (over + before) / 3, 0.0)
+    missing = contour.area() - _area(ring)
+    # the area is a polynomial of degree two in how far the corners move
+    square = _area(outward)
+    linear = _area(ring + outward) - _area(ring) - square
+    if linear == 0:
+        return ring
+    far = missing / linear
+    for _ in range(4):
+        far -= (square * far * far + linear * far - missing) / (2 * square * far + linear)
+    # far from 1 only where a contour hardly bends at all: then there is nothing to make good
+    return ring + (far if 0 < far < 2 else 1.0) * outward
+
+
+def _point(corners: FloatArray, u: FloatArray) -> FloatArray:
+    a, b, c, d = corners
+    return np.asarray((1 - u) ** 3 * a + 3 * (1 - u) ** 2 * u * b + 3 * (1 - u) * u**2 * c + u**3 * d)
+
+
+def _slope(corners: FloatArray, u: FloatArray) -> FloatArray:
+    a, b, c, d = corners
+    return np.asarray(3 * ((1 - u) ** 2 * (b - a) + 2 * (1 - u) * u * (c - b) + u**2 * (d - c)))
+
+
+def _area(ring: FloatArray) -> float:
+    x, y = ring[:, 0], ring[:, 1]
+    return float(0.5 * np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y))
