@@ -3,8 +3,8 @@
 XYZ is relative: the perfect diffuser has Y = 1 (not 100, the trap of this field).  Every
 function takes arrays whose last axis holds the three components.
 
-Sources: CIE 015:2018 and ISO/CIE 11664-4 for CIELAB; Sharma, Wu & Dalal 2005 for CIEDE2000
-as it is computed; IEC 61966-2-1 for sRGB; the Bradford matrix of ICC.1 for the adaptation.
+Sources by their keys: iso-11664-4 for CIELAB, cie-15-2018 for its white, sharma-2005 for
+CIEDE2000 as it is computed, iec-61966-2-1 for sRGB, icc-1 for the Bradford adaptation.
 """
 
 from __future__ import annotations

@@ -1,4 +1,7 @@
-"""The inks of a job on their paper, and the colour of every overprint."""
+"""The inks of a job on their paper, and the colour of every overprint.
+
+Where an overprint was not measured this is a model, and a plain one: source overprint-product.
+"""
 
 from __future__ import annotations
 

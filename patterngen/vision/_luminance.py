@@ -10,7 +10,7 @@ from patterngen.model.job import Lab
 def luminance_cd_m2(*, light_lx: float, paper_lab: Lab) -> float:
     """Luminance of paper in cd/m2, taken as a matt surface: light x luminance factor / pi.
 
-    Only L* of the CIELAB colour counts.  Source: CIE 015:2018 for the luminance factor of L*.
+    Only L* of the CIELAB colour counts.  Source: iso-11664-4 for the luminance factor of L*.
 
     >>> round(luminance_cd_m2(light_lx=500.0, paper_lab=(95.0, 0.0, -2.0)), 2)
     139.45

@@ -1,8 +1,8 @@
-"""published: Sharma, Wu & Dalal 2005, The CIEDE2000 color-difference formula, Color Res. Appl. 30(1), Table 1.
+"""published: Sharma, Wu & Dalal 2005, The CIEDE2000 color-difference formula, Color Res. Appl. 30, Table 1.
 
-The numbers were taken from the test data that scikit-image 0.19.3 (Debian python3-skimage) ships,
-which names the paper as its source.  The pairs are made to catch what programs get wrong: hues on
-both sides of 0 degrees, hues that lie opposite, greys.
+Source: sharma-2005.  The numbers were taken from the test data that scikit-image 0.19.3 (Debian's
+python3-skimage) ships, which names the paper as its source.  The pairs are made to catch what
+programs get wrong: hues on both sides of 0 degrees, hues that lie opposite, greys.
 """
 
 from __future__ import annotations

@@ -1,8 +1,8 @@
 """published: values printed in the documentation and the test-suite of colour-science 0.4.7.
 
-They are typed in here, not computed by it: `colour.contrast.barten1999` (Barten 1999 and ITU-R
-BT.2246-4, figure 31), `colour.difference`, `colour.models.cie_lab`, and its tables of illuminants
-(CIE 015:2018).
+Source: colour-science.  They are typed in here, not computed by it: `colour.contrast.barten1999`
+(Barten 1999 and ITU-R BT.2246-4, figure 31), `colour.difference`, `colour.models.cie_lab`, and its
+tables of illuminants (CIE 015:2018).
 """
 
 from __future__ import annotations
@@ -55,7 +55,7 @@ def test_least_contrast_that_is_detected() -> None:
 @pytest.mark.parametrize(
     ("one", "other", "printed"),
     [
-        ((48.99183622, -0.10561667, 400.65619925), (50.65907324, -0.11671910, 402.82235718), 1.670930327213592),
+        ((48.99183622, -0.10561667, 400.65619925), (50.65907324, -0.11671910, 402.82235718), 1.67093032721),
         ((100.0, 21.57210357, 272.22819350), (100.0, 426.67945353, 72.39590835), 94.03564903),
         ((100.0, 21.57210357, 272.22819350), (100.0, 74.05216981, 276.45318193), 14.87906419),
     ],

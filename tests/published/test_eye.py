@@ -1,4 +1,7 @@
-"""published: figures of the Mannos & Sakrison response that circulate in print and in public code."""
+"""published: figures of the Mannos & Sakrison response that circulate in print and in public code.
+
+Source: mannos-sakrison-1974, at second hand.
+"""
 
 from __future__ import annotations
 
@@ -16,7 +19,7 @@ def test_peak_of_mannos_and_sakrison() -> None:
 
 
 def test_peak_is_near_eight_cycles_and_near_one() -> None:
-    """K. Matkovic, thesis on tone mapping (page read): the curve peaks near 8 cycles per degree at about 1."""
+    """K. Matkovic, thesis on tone mapping (one page read): a peak of about 1 near 8 cycles per degree."""
     found = mannos_sakrison1974.response([4.0, 8.0, 16.0])
     assert found[1] > 0.97
     assert np.all(found <= 1.0)

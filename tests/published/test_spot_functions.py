@@ -1,6 +1,6 @@
 """published: ISO 32000-1:2008, Table 130, whose PostScript is run here against the program's functions.
 
-The code was read in the resource files of the ghostscript interpreter, version 10.00.0
+Source: iso-32000-1.  The code was read in the resource files of the ghostscript interpreter, version 10.00.0
 (pdf_draw.ps), which carries the standard's functions.  EllipseC and InvertedEllipseC are left
 out: there they have the code of EllipseA, which cannot be what the standard means.
 """
