@@ -112,10 +112,24 @@ def _refuse_target(path: Path) -> None:
     except (OSError, ValueError) as error:
         raise InputError(Fault(str(path), "", f"this cannot be a file to write ({_cause(error)})")) from None
     if stat.S_ISLNK(status.st_mode):
-        raise InputError(Fault(str(path), "", "a link stands where a file is to be written", allowed="a plain file or nothing"))
+        raise InputError(
+            Fault(
+                str(path),
+                "",
+                "a link stands where a file is to be written",
+                allowed="a plain file or nothing",
+            )
+        )
     if not stat.S_ISREG(status.st_mode):
         kind = "a folder" if stat.S_ISDIR(status.st_mode) else "something that is not a file"
-        raise InputError(Fault(str(path), "", f"{kind} stands where a file is to be written", allowed="a plain file or nothing"))
+        raise InputError(
+            Fault(
+                str(path),
+                "",
+                f"{kind} stands where a file is to be written",
+                allowed="a plain file or nothing",
+            )
+        )
 
 
 def _sync_folder(folder: Path) -> None:

@@ -35,9 +35,19 @@ def _answer(task: Mapping[str, Any], data: bytes) -> tuple[dict[str, Any], bytes
     try:
         return _outlines(task, data) if task["kind"] == "outlines" else _picture(task, data)
     except (OutlineError, PictureError) as error:
-        return {"problem": error.problem, "value": error.value, "allowed": error.allowed, "nearest": error.nearest}, b""
+        return {
+            "problem": error.problem,
+            "value": error.value,
+            "allowed": error.allowed,
+            "nearest": error.nearest,
+        }, b""
     except MemoryError:
-        return {"problem": "needs too much memory", "value": "", "allowed": f"at most {MEMORY_BYTES >> 30} GiB", "nearest": ""}, b""
+        return {
+            "problem": "needs too much memory",
+            "value": "",
+            "allowed": f"at most {MEMORY_BYTES >> 30} GiB",
+            "nearest": "",
+        }, b""
     except RecursionError:
         return {"problem": "is nested too deep", "value": "", "allowed": "plain drawings", "nearest": ""}, b""
 
@@ -61,7 +71,11 @@ def _picture(task: Mapping[str, Any], data: bytes) -> tuple[dict[str, Any], byte
 
     found = pictures.read(data, label=task["label"])
     values = found.values.astype(found.values.dtype.newbyteorder("<"))
-    return {"size": list(values.shape), "bits": 8 * values.itemsize, "remarks": found.remarks}, values.tobytes()
+    return {
+        "size": list(values.shape),
+        "bits": 8 * values.itemsize,
+        "remarks": found.remarks,
+    }, values.tobytes()
 
 
 def _send(stream: BinaryIO, head: dict[str, Any], body: bytes) -> None:

@@ -67,7 +67,9 @@ class _Answer:
     body: bytes
 
 
-def read(tables: Mapping[str, Sequence[TableReading]], *, folder: Path | None, where: str) -> tuple[Artwork, list[Fault]]:
+def read(
+    tables: Mapping[str, Sequence[TableReading]], *, folder: Path | None, where: str
+) -> tuple[Artwork, list[Fault]]:
     """Every picture and outline of the preset, and the faults of those that cannot be used.
 
     Raises `MachineError` where no child process can be had.
@@ -103,10 +105,18 @@ def _tasks(reading: TableReading, sheet: SheetSize) -> list[tuple[str, tuple[str
     out: list[tuple[str, tuple[str, ...], dict[str, Any]]] = []
     area, tone = reading["area"], reading["tone"]
     if isinstance(area, SvgArea):
-        head = {"kind": "outlines", "element": area.id, "sheet_height_mm": sheet.height_mm, "box_mm": sheet.box_mm, "label": area.svg}
+        head = {
+            "kind": "outlines",
+            "element": area.id,
+            "sheet_height_mm": sheet.height_mm,
+            "box_mm": sheet.box_mm,
+            "label": area.svg,
+        }
         out.append((f"{reading.path}.area.svg", ("outlines", area.svg, area.id or ""), head))
     if isinstance(tone, ImageTone):
-        out.append((f"{reading.path}.tone.image", ("picture", tone.image), {"kind": "picture", "label": tone.image}))
+        out.append(
+            (f"{reading.path}.tone.image", ("picture", tone.image), {"kind": "picture", "label": tone.image})
+        )
     return out
 
 
@@ -116,7 +126,16 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
     outlines = task_key[0] == "outlines"
 
     def refuse(problem: str, nearest: str = "") -> InputError:
-        return InputError(Fault(where, key, problem, shown(text), "a path inside the preset's folder, like \"art/panel.svg\"", nearest))
+        return InputError(
+            Fault(
+                where,
+                key,
+                problem,
+                shown(text),
+                'a path inside the preset\'s folder, like "art/panel.svg"',
+                nearest,
+            )
+        )
 
     if folder is None:
         raise refuse("this preset has no folder, so it cannot name files")
@@ -133,15 +152,31 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
     if not full.is_relative_to(base):
         raise refuse("the path leaves the preset's folder through a link")
     most = MOST_SVG_BYTES if outlines else MOST_PICTURE_BYTES
-    data = read_plain_file(full, most_bytes=most, what="the drawing" if outlines else "the picture", where=where, key=key)
+    data = read_plain_file(
+        full, most_bytes=most, what="the drawing" if outlines else "the picture", where=where, key=key
+    )
     if outlines and data.startswith(b"\x1f\x8b"):
-        raise InputError(Fault(where, key, "the drawing is packed (svgz)", shown(text), "plain SVG: unpack it first"))
-    if outlines and (data.startswith((b"\x89PNG", b"\xff\xd8\xff", b"II", b"MM", b"%PDF", b"GIF8")) or not data.strip()):
-        raise InputError(Fault(where, key, "the drawing is empty" if not data.strip() else "the file is no SVG, by its content", shown(text), "SVG"))
+        raise InputError(
+            Fault(where, key, "the drawing is packed (svgz)", shown(text), "plain SVG: unpack it first")
+        )
+    if outlines and (
+        data.startswith((b"\x89PNG", b"\xff\xd8\xff", b"II", b"MM", b"%PDF", b"GIF8")) or not data.strip()
+    ):
+        raise InputError(
+            Fault(
+                where,
+                key,
+                "the drawing is empty" if not data.strip() else "the file is no SVG, by its content",
+                shown(text),
+                "SVG",
+            )
+        )
     return data
 
 
-def _ask(tasks: Mapping[tuple[str, ...], _Task], where: str) -> tuple[dict[tuple[str, ...], _Answer], list[Fault]]:
+def _ask(
+    tasks: Mapping[tuple[str, ...], _Task], where: str
+) -> tuple[dict[tuple[str, ...], _Answer], list[Fault]]:
     """Hand the tasks to a child; where one kills it, name that one and go on with the rest."""
     answers: dict[tuple[str, ...], _Answer] = {}
     faults: list[Fault] = []
@@ -157,7 +192,9 @@ def _ask(tasks: Mapping[tuple[str, ...], _Task], where: str) -> tuple[dict[tuple
         if death and left:
             task_key, task = next(iter(left.items()))
             del left[task_key]
-            faults.append(Fault(where, task.key, f"the file {death}", shown(task.label), allowed="a simpler file"))
+            faults.append(
+                Fault(where, task.key, f"the file {death}", shown(task.label), allowed="a simpler file")
+            )
     return answers, faults
 
 
@@ -175,15 +212,25 @@ def _one_child(tasks: Sequence[_Task]) -> tuple[list[_Answer], str]:
     package_home = str(Path(__file__).resolve().parents[2])
     paths = [package_home, *filter(None, [os.environ.get("PYTHONPATH")])]
     # one thread is enough, and keeps the address space of the mathematics library small
-    environment = os.environ | {"PYTHONPATH": os.pathsep.join(paths), "OPENBLAS_NUM_THREADS": "1", "OMP_NUM_THREADS": "1"}
+    environment = os.environ | {
+        "PYTHONPATH": os.pathsep.join(paths),
+        "OPENBLAS_NUM_THREADS": "1",
+        "OMP_NUM_THREADS": "1",
+    }
     command = [sys.executable, "-P", "-m", "patterngen.job.artist"]
-    request = json.dumps([task.head for task in tasks]).encode() + b"\n" + b"".join(task.data for task in tasks)
+    request = (
+        json.dumps([task.head for task in tasks]).encode() + b"\n" + b"".join(task.data for task in tasks)
+    )
     try:
-        done = subprocess.run(command, input=request, capture_output=True, timeout=WALL_SECONDS, env=environment, check=False)
+        done = subprocess.run(
+            command, input=request, capture_output=True, timeout=WALL_SECONDS, env=environment, check=False
+        )
     except subprocess.TimeoutExpired as error:
         return _answers(error.stdout or b""), f"took longer than {WALL_SECONDS} s to read"
     except OSError as error:
-        raise MachineError(f"the reader of artwork could not be started ({error.strerror or error})") from error
+        raise MachineError(
+            f"the reader of artwork could not be started ({error.strerror or error})"
+        ) from error
     answers = _answers(done.stdout)
     if done.returncode == 0 and len(answers) == len(tasks):
         return answers, ""
@@ -194,7 +241,9 @@ def _one_child(tasks: Sequence[_Task]) -> tuple[list[_Answer], str]:
     if done.returncode == -signal.SIGKILL:
         raise MachineError("the reader of artwork was killed from outside, perhaps for lack of memory")
     lines = done.stderr.decode("utf-8", "replace").strip().splitlines()
-    raise MachineError(f"the reader of artwork ended with code {done.returncode}: {lines[-1] if lines else 'no word'}")
+    raise MachineError(
+        f"the reader of artwork ended with code {done.returncode}: {lines[-1] if lines else 'no word'}"
+    )
 
 
 def _answers(output: bytes) -> list[_Answer]:
@@ -211,7 +260,11 @@ def _answers(output: bytes) -> list[_Answer]:
     return out
 
 
-def _artwork(screens: Sequence[TableReading], wanted: Mapping[str, tuple[str, ...]], answers: Mapping[tuple[str, ...], _Answer]) -> Artwork:
+def _artwork(
+    screens: Sequence[TableReading],
+    wanted: Mapping[str, tuple[str, ...]],
+    answers: Mapping[tuple[str, ...], _Answer],
+) -> Artwork:
     areas: dict[str, Area] = {}
     pictures: dict[str, tuple[NDArray[np.float32], str]] = {}
     remarks: list[str] = []

@@ -10,9 +10,18 @@ from patterngen.errors import Fault
 from patterngen.job.preset import GridTable, ImageTone, ScreenTable
 from patterngen.job.tables import TableReading, nearest, shown
 from patterngen.model.job import Job
-from patterngen.units import RESOLUTION, RULING, plain
+from patterngen.units import RULING, plain
 
-__all__ = ["COMMON_GRID_KEYS", "COMMON_SCREEN_KEYS", "ImageTone", "across", "degrees", "oddities", "percent", "too_much"]
+__all__ = [
+    "COMMON_GRID_KEYS",
+    "COMMON_SCREEN_KEYS",
+    "ImageTone",
+    "across",
+    "degrees",
+    "oddities",
+    "percent",
+    "too_much",
+]
 
 COMMON_SCREEN_KEYS = frozenset(ScreenTable.model_fields)
 COMMON_GRID_KEYS = frozenset(GridTable.model_fields)
@@ -40,7 +49,9 @@ def too_much(job: Job, *, where: str) -> list[Fault]:
 
     Screens whose ruling is still open are left out: call it again when it is derived.
     """
-    counts = {screen.name: estimated_shapes(job, screen.name) for screen in job.screens if screen.ruling_per_mm}
+    counts = {
+        screen.name: estimated_shapes(job, screen.name) for screen in job.screens if screen.ruling_per_mm
+    }
     total = sum(counts.values())
     if total <= MOST_SHAPES:
         return []
@@ -97,7 +108,7 @@ def _odd_ruling(reading: TableReading) -> Iterator[str]:
         if low <= swapped <= high and abs(figure - round(figure, 3)) < 1e-9:
             yield (
                 f"{reading.path}.ruling: {plain(figure)} {unit} is an unusual ruling; "
-                f"if {plain(figure)} {other} was meant, write \"{plain(figure)} {other}\""
+                f'if {plain(figure)} {other} was meant, write "{plain(figure)} {other}"'
             )
             return
 
@@ -115,14 +126,18 @@ def _sheet(tables: Readings, where: str) -> Iterator[Fault]:
                 "the page is larger than print files can hold",
                 f"{plain(longest)} mm with bleed",
                 allowed=f"at most {plain(LARGEST_PAGE_MM)} mm (14400 pt), bleed included",
-                nearest=f'"{plain(math.floor(LARGEST_PAGE_MM - 2 * bleed))} mm"' if bleed < LARGEST_PAGE_MM / 2 else "",
+                nearest=f'"{plain(math.floor(LARGEST_PAGE_MM - 2 * bleed))} mm"'
+                if bleed < LARGEST_PAGE_MM / 2
+                else "",
             )
 
 
 def _gains(tables: Readings, where: str) -> Iterator[Fault]:
     for reading in (*tables["press"], *tables["screen"]):
         if reading.get("gain") is not None and reading.get("edge_gain") is not None:
-            yield Fault(where, f"{reading.path}.edge_gain", "two gains at once", allowed="either gain or edge_gain")
+            yield Fault(
+                where, f"{reading.path}.edge_gain", "two gains at once", allowed="either gain or edge_gain"
+            )
 
 
 def _ink_names(tables: Readings, where: str) -> Iterator[Fault]:
@@ -133,12 +148,35 @@ def _ink_names(tables: Readings, where: str) -> Iterator[Fault]:
             continue
         key = _folded(name)
         if key in _RESERVED_INKS:
-            yield Fault(where, f"{reading.path}.name", "a name that print files keep for every plate or none", shown(name), nearest=shown(f"{name} ink"))
+            yield Fault(
+                where,
+                f"{reading.path}.name",
+                "a name that print files keep for every plate or none",
+                shown(name),
+                nearest=shown(f"{name} ink"),
+            )
         if len(name.encode()) > 120:
-            yield Fault(where, f"{reading.path}.name", "a name too long for print files", shown(name), allowed="at most 120 bytes in UTF-8")
+            yield Fault(
+                where,
+                f"{reading.path}.name",
+                "a name too long for print files",
+                shown(name),
+                allowed="at most 120 bytes in UTF-8",
+            )
         if key in seen:
-            how = "stands here twice" if seen[key] == name else f"differs from {shown(seen[key])} by case or form only"
-            yield Fault(where, f"{reading.path}.name", f"the ink {how}", shown(name), allowed="a name of its own for each ink", nearest=shown(f"{name} 2"))
+            how = (
+                "stands here twice"
+                if seen[key] == name
+                else f"differs from {shown(seen[key])} by case or form only"
+            )
+            yield Fault(
+                where,
+                f"{reading.path}.name",
+                f"the ink {how}",
+                shown(name),
+                allowed="a name of its own for each ink",
+                nearest=shown(f"{name} 2"),
+            )
         seen.setdefault(key, name)
 
 
@@ -150,7 +188,14 @@ def _names(tables: Readings, where: str) -> Iterator[Fault]:
             continue
         key = _folded(name)
         if key in seen:
-            yield Fault(where, f"{reading.path}.name", f"the name is taken by {seen[key]}", shown(name), allowed="a name of its own for each screen and grid", nearest=_free_name(name, seen))
+            yield Fault(
+                where,
+                f"{reading.path}.name",
+                f"the name is taken by {seen[key]}",
+                shown(name),
+                allowed="a name of its own for each screen and grid",
+                nearest=_free_name(name, seen),
+            )
         seen.setdefault(key, reading.path)
 
 
@@ -160,11 +205,20 @@ def _inks_used(tables: Readings, where: str) -> Iterator[Fault]:
         return  # an ink whose name is faulty may be the one that is meant
     known = [str(name) for name in names]
     places = [(f"{r.path}.ink", r.get("ink")) for r in tables["screen"]]
-    places += [(f"{r.path}.inks[{i}]", ink) for r in tables["overprint"] for i, ink in enumerate(r.get("inks") or ())]
+    places += [
+        (f"{r.path}.inks[{i}]", ink) for r in tables["overprint"] for i, ink in enumerate(r.get("inks") or ())
+    ]
     for key, ink in places:
         if ink is not None and ink not in known:
             near = nearest(ink, known)
-            yield Fault(where, key, "no [[ink]] has this name", shown(ink), allowed=", ".join(map(shown, known)), nearest=shown(near) if near else "")
+            yield Fault(
+                where,
+                key,
+                "no [[ink]] has this name",
+                shown(ink),
+                allowed=", ".join(map(shown, known)),
+                nearest=shown(near) if near else "",
+            )
 
 
 def _overprints(tables: Readings, where: str) -> Iterator[Fault]:
@@ -173,17 +227,41 @@ def _overprints(tables: Readings, where: str) -> Iterator[Fault]:
         inks = reading.get("inks")
         if inks is not None:
             if len(set(inks)) < len(inks):
-                yield Fault(where, f"{reading.path}.inks", "an ink stands here twice", shown(inks), allowed="each ink once")
+                yield Fault(
+                    where,
+                    f"{reading.path}.inks",
+                    "an ink stands here twice",
+                    shown(inks),
+                    allowed="each ink once",
+                )
             group = frozenset(inks)
             if group in seen:
-                yield Fault(where, f"{reading.path}.inks", f"these inks stand in {seen[group]} already", shown(inks), allowed="each set of inks once")
+                yield Fault(
+                    where,
+                    f"{reading.path}.inks",
+                    f"these inks stand in {seen[group]} already",
+                    shown(inks),
+                    allowed="each set of inks once",
+                )
             seen.setdefault(group, reading.path)
-        if any(fault.key.startswith((f"{reading.path}.lab", f"{reading.path}.never")) for fault in reading.faults):
+        if any(
+            fault.key.startswith((f"{reading.path}.lab", f"{reading.path}.never")) for fault in reading.faults
+        ):
             continue
         if reading.get("never") and reading.get("lab") is not None:
-            yield Fault(where, f"{reading.path}.lab", "a colour for inks that never meet", allowed="either lab or never = true")
+            yield Fault(
+                where,
+                f"{reading.path}.lab",
+                "a colour for inks that never meet",
+                allowed="either lab or never = true",
+            )
         if not reading.get("never") and reading.get("lab") is None:
-            yield Fault(where, f"{reading.path}.lab", "this key is missing", allowed="lab = [L, a, b] as measured, or never = true")
+            yield Fault(
+                where,
+                f"{reading.path}.lab",
+                "this key is missing",
+                allowed="lab = [L, a, b] as measured, or never = true",
+            )
 
 
 def _rulings(tables: Readings, where: str) -> Iterator[Fault]:
@@ -199,7 +277,7 @@ def _rulings(tables: Readings, where: str) -> Iterator[Fault]:
                 f"{reading.path}.ruling",
                 "finer than the imager can draw: a cell needs two of its pixels",
                 _spell_ruling(ruling),
-                allowed=f"at most {_spell_ruling(imager / 2)} at {plain(imager / RESOLUTION.units['dpi'])} dpi",
+                allowed=f"at most {_spell_ruling(imager / 2)} with this imager",
                 nearest=f'"{_spell_ruling(imager / 2)}"',
             )
 
@@ -209,7 +287,13 @@ def _waivers(tables: Readings, where: str) -> Iterator[Fault]:
     for reading in tables["waive"]:
         rule = reading.get("rule")
         if rule is not None and rule in seen:
-            yield Fault(where, f"{reading.path}.rule", "this rule is waived already", shown(rule), allowed="each rule once")
+            yield Fault(
+                where,
+                f"{reading.path}.rule",
+                "this rule is waived already",
+                shown(rule),
+                allowed="each rule once",
+            )
         if rule is not None:
             seen.add(rule)
 
@@ -226,5 +310,3 @@ def _free_name(name: str, taken: Iterable[str]) -> str:
 
 def _spell_ruling(ruling_per_mm: float) -> str:
     return f"{plain(ruling_per_mm / RULING.units['lpi'])} lpi"
-
-

@@ -49,19 +49,38 @@ def decode(data: bytes, *, where: str) -> tuple[str, list[str]]:
     except UnicodeDecodeError as error:
         line = data.count(b"\n", 0, error.start) + 1
         zeros = data[:4096].count(0)
-        guess = "UTF-16 without its mark, or binary data" if zeros else "Latin-1 or Windows-1252, by the look of it"
+        guess = (
+            "UTF-16 without its mark, or binary data"
+            if zeros
+            else "Latin-1 or Windows-1252, by the look of it"
+        )
         raise InputError(
-            Fault(where, "", f"line {line}: the file is not UTF-8 ({guess})", value=f"byte 0x{data[error.start]:02x}", allowed="UTF-8")
+            Fault(
+                where,
+                "",
+                f"line {line}: the file is not UTF-8 ({guess})",
+                value=f"byte 0x{data[error.start]:02x}",
+                allowed="UTF-8",
+            )
         ) from None
     if "\0" in text:
         line = text.count("\n", 0, text.index("\0")) + 1
         guess = "UTF-16" if data[:4096].count(0) > len(data[:4096]) // 4 else "binary data"
-        raise InputError(Fault(where, "", f"line {line}: the file holds zero bytes ({guess})", allowed="UTF-8 text"))
+        raise InputError(
+            Fault(where, "", f"line {line}: the file holds zero bytes ({guess})", allowed="UTF-8 text")
+        )
     if "\r" in text:
         text = text.replace("\r\n", "\n")
         if "\r" in text:
             line = text.count("\n", 0, text.index("\r")) + 1
-            raise InputError(Fault(where, "", f"line {line}: a carriage return without a line feed", allowed="plain line ends"))
+            raise InputError(
+                Fault(
+                    where,
+                    "",
+                    f"line {line}: a carriage return without a line feed",
+                    allowed="plain line ends",
+                )
+            )
         remarks.append("the preset's line ends (CR LF) were read as plain ones")
     return text, remarks
 
@@ -79,7 +98,9 @@ def parse(text: str, *, where: str) -> dict[str, Any]:
         raise InputError(_syntax_fault(str(error), text, where)) from None
     except (ValueError, RecursionError, OverflowError):
         # a number of thousands of digits, or a date that no calendar has
-        raise InputError(Fault(where, "", "a number or date that no program can hold", allowed="everyday numbers")) from None
+        raise InputError(
+            Fault(where, "", "a number or date that no program can hold", allowed="everyday numbers")
+        ) from None
     if faults := list(bad_values(data, where=where)):
         raise InputError(faults)
     return data
@@ -107,7 +128,9 @@ def bad_values(data: object, *, where: str, key: str = "", depth: int = 0) -> It
             if not isinstance(name, str):
                 yield Fault(where, key, "a key that is not a text", value=repr(name)[:60])
             else:
-                yield from bad_values(value, where=where, key=f"{key}.{name}" if key else name, depth=depth + 1)
+                yield from bad_values(
+                    value, where=where, key=f"{key}.{name}" if key else name, depth=depth + 1
+                )
     elif isinstance(data, list | tuple):
         for index, value in enumerate(data):
             yield from bad_values(value, where=where, key=f"{key}[{index}]", depth=depth + 1)
@@ -123,9 +146,21 @@ def bad_values(data: object, *, where: str, key: str = "", depth: int = 0) -> It
         if any("\ud800" <= character <= "\udfff" for character in data):
             yield Fault(where, key, "a text that is not Unicode", value=ascii(data)[:60])
     elif isinstance(data, datetime.date | datetime.time):
-        yield Fault(where, key, "a date where none belongs", value=str(data), allowed="a text, in quotes", nearest=f'"{data}"')
+        yield Fault(
+            where,
+            key,
+            "a date where none belongs",
+            value=str(data),
+            allowed="a text, in quotes",
+            nearest=f'"{data}"',
+        )
     else:
-        yield Fault(where, key, f"a value of a kind that no preset holds ({type(data).__name__})", allowed="texts, numbers, true, false, lists and tables")
+        yield Fault(
+            where,
+            key,
+            f"a value of a kind that no preset holds ({type(data).__name__})",
+            allowed="texts, numbers, true, false, lists and tables",
+        )
 
 
 def _refuse_depth(text: str, where: str) -> None:
@@ -150,30 +185,30 @@ def _refuse_depth(text: str, where: str) -> None:
 
 # What the parser says, in words for somebody who only wants the file to be read.
 _PLAIN_WORDS = (
-    (re.compile(r"Cannot overwrite a value"), "this key stands here a second time"),
-    (re.compile(r"Duplicate inline table key (.*)"), r"this key stands here a second time: \1"),
-    (re.compile(r"Cannot declare \((.*?),?\) twice"), r"this table stands here a second time: \1"),
-    (re.compile(r"Cannot mutate immutable namespace (.*)|Cannot redefine namespace (.*)"), "this table was closed further up and cannot be added to"),
-    (re.compile(r"Invalid value"), "no legal value stands here (a text needs quotes)"),
-    (re.compile(r"Invalid statement"), "this is neither a key with a value, nor a [table], nor a # comment"),
-    (re.compile(r"Invalid initial character for a key part"), "a key cannot begin like this"),
-    (re.compile(r"Expected '=' after a key in a key/value pair"), "an equals sign is missing after the key"),
-    (re.compile(r"Expected '\]' at the end of a table declaration"), "the closing ] of this table is missing"),
-    (re.compile(r"Expected '\]\]' at the end of an array declaration"), "the closing ]] of this table is missing"),
-    (re.compile(r"Expected newline or end of document after a statement"), "the line goes on after its value"),
-    (re.compile(r"Unterminated string|Expected \"'\"|Expected '\"'"), "the closing quote is missing"),
-    (re.compile(r"Unclosed array"), "the closing ] of this list is missing"),
-    (re.compile(r"Unclosed inline table"), "the closing } of this table is missing"),
-    (re.compile(r"Unescaped '\\\\' in a string"), "a backslash that begins no known escape (double it)"),
-    (re.compile(r"Illegal character (.*)"), r"a character that may not stand here: \1"),
-)  # fmt: skip
+    (r"Cannot overwrite a value", "this key stands here a second time"),
+    (r"Duplicate inline table key (.*)", r"this key stands here a second time: \1"),
+    (r"Cannot declare \((.*?),?\) twice", r"this table stands here a second time: \1"),
+    (r"Cannot mutate immutable namespace|Cannot redefine namespace", "this table is closed already"),
+    (r"Invalid value", "no legal value stands here (a text needs quotes)"),
+    (r"Invalid statement", "this is neither a key with a value, nor a [table], nor a # comment"),
+    (r"Invalid initial character for a key part", "a key cannot begin like this"),
+    (r"Expected '=' after a key in a key/value pair", "an equals sign is missing after the key"),
+    (r"Expected '\]' at the end of a table declaration", "a ] is missing after the table's name"),
+    (r"Expected '\]\]' at the end of an array declaration", "a ]] is missing after the table's name"),
+    (r"Expected newline or end of document after a statement", "something follows the value on its line"),
+    (r"Unterminated string|Expected \"'\"|Expected '\"'", "the closing quote is missing"),
+    (r"Unclosed array", "the closing ] of this list is missing"),
+    (r"Unclosed inline table", "the closing } of this table is missing"),
+    (r"Unescaped '\\\\' in a string", "a backslash that begins no known escape (double it)"),
+    (r"Illegal character (.*)", r"a character that may not stand here: \1"),
+)
 
 
 def _syntax_fault(message: str, text: str, where: str) -> Fault:
     place = _PLACE.search(message)
     problem = _PLACE.sub("", message)
     for pattern, words in _PLAIN_WORDS:
-        if match := pattern.search(problem):
+        if match := re.search(pattern, problem):
             problem = match.expand(words)
             break
     if place and place.group(1):

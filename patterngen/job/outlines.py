@@ -33,15 +33,29 @@ _LARGEST = 1e7
 _MM_PER_PX = 25.4 / 96
 _SVG = "{http://www.w3.org/2000/svg}"
 _HREF = ("href", "{http://www.w3.org/1999/xlink}href")
-_UNITS_MM = {"": _MM_PER_PX, "px": _MM_PER_PX, "mm": 1.0, "cm": 10.0, "in": 25.4, "pt": 25.4 / 72, "pc": 25.4 / 6, "q": 0.25}
-_NUMBER = r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,3})?"
+_UNITS_MM = {
+    "": _MM_PER_PX,
+    "px": _MM_PER_PX,
+    "mm": 1.0,
+    "cm": 10.0,
+    "in": 25.4,
+    "pt": 25.4 / 72,
+    "pc": 25.4 / 6,
+    "q": 0.25,
+}
+# atomic, so that a long row of digits is not tried as two numbers in every possible way
+_NUMBER = r"(?>[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,3})?)"
 _NUMBERS = re.compile(_NUMBER, re.ASCII)
 
 _SHAPES = frozenset(["path", "rect", "circle", "ellipse", "polygon", "polyline", "line"])
 _GROUPS = frozenset(["g", "a"])
 # these draw nothing where they stand
 _UNDRAWN = frozenset(
-    ["title", "desc", "metadata", "defs", "style", "symbol", "linearGradient", "radialGradient", "pattern", "marker", "filter", "clipPath", "mask", "view"]
+    [
+        "title", "desc", "metadata", "view",
+        "defs", "style", "symbol", "clipPath", "mask", "marker",
+        "linearGradient", "radialGradient", "pattern", "filter",
+    ]
 )  # fmt: skip
 
 
@@ -93,7 +107,10 @@ def read(
             allowed="outlines on the sheet; the page's top left corner lies on the trim's",
         )
     if cut.area < flipped.area * (1 - 1e-9):
-        drawing.remarks.append(f"{label}: reaches beyond the sheet and was cut there ({flipped.area:.6g} mm2 to {cut.area:.6g} mm2)")
+        drawing.remarks.append(
+            f"{label}: reaches beyond the sheet and was cut there, "
+            f"from {flipped.area:.6g} mm2 to {cut.area:.6g} mm2"
+        )
     return Outlines(list(_rings(cut)), drawing.summary())
 
 
@@ -141,18 +158,26 @@ def _parse(data: bytes) -> ET.Element:
             parser.feed(data[at : at + (1 << 16)])
         root = parser.close()
     except DTDForbidden:
-        raise OutlineError("it has a document type declaration", allowed="SVG without <!DOCTYPE ...>: take that line out") from None
+        raise OutlineError(
+            "it has a document type declaration", allowed="SVG without <!DOCTYPE ...>: take that line out"
+        ) from None
     except DefusedXmlException:
         raise OutlineError("it has entities of its own", allowed="plain SVG") from None
     except ET.ParseError as error:
         line, column = error.position
-        raise OutlineError(f"it is not well-formed XML (line {line}, column {column + 1})", allowed="SVG") from None
+        raise OutlineError(
+            f"it is not well-formed XML (line {line}, column {column + 1})", allowed="SVG"
+        ) from None
     except (LookupError, ValueError) as error:
         if isinstance(error, OutlineError):
             raise
         raise OutlineError("its text encoding is not known", allowed="UTF-8") from None
     if root.tag != f"{_SVG}svg":
-        raise OutlineError("it is XML but no SVG", value=f"<{_short(root.tag)}>", allowed='<svg xmlns="http://www.w3.org/2000/svg" ...>')
+        raise OutlineError(
+            "it is XML but no SVG",
+            value=f"<{_short(root.tag)}>",
+            allowed='<svg xmlns="http://www.w3.org/2000/svg" ...>',
+        )
     assert isinstance(root, ET.Element)
     return root
 
@@ -165,7 +190,11 @@ def _page_matrix(root: ET.Element) -> FloatArray:
         return np.array([[_MM_PER_PX, 0.0, 0.0], [0.0, _MM_PER_PX, 0.0], [0.0, 0.0, 1.0]])
     numbers = _all_numbers(box, 4)
     if numbers is None or numbers[2] <= 0 or numbers[3] <= 0:
-        raise OutlineError("its viewBox is none", value=_clip(box), allowed='four numbers, the last two above zero, like "0 0 90 60"')
+        raise OutlineError(
+            "its viewBox is none",
+            value=_clip(box),
+            allowed='four numbers, the last two above zero, like "0 0 90 60"',
+        )
     x, y, wide, high = numbers
     sx, sy = sizes[0] / wide, sizes[1] / high
     words = root.get("preserveAspectRatio", "xMidYMid meet").split()
@@ -174,7 +203,11 @@ def _page_matrix(root: ET.Element) -> FloatArray:
     if align != "none":
         match = re.fullmatch(r"x(Min|Mid|Max)Y(Min|Mid|Max)", align)
         if not match or len(words) > 2 or (len(words) == 2 and words[1] not in ("meet", "slice")):
-            raise OutlineError("its preserveAspectRatio is none", value=_clip(" ".join(words)), allowed='like "xMidYMid meet"')
+            raise OutlineError(
+                "its preserveAspectRatio is none",
+                value=_clip(" ".join(words)),
+                allowed='like "xMidYMid meet"',
+            )
         one = max(sx, sy) if words[1:] == ["slice"] else min(sx, sy)
         part = {"Min": 0.0, "Mid": 0.5, "Max": 1.0}
         dx = part[match[1]] * (sizes[0] - one * wide)
@@ -193,7 +226,9 @@ def _page_length(text: str | None, name: str) -> float:
         raise OutlineError(f"its page's {name} is no real size", value=_clip(text), allowed=allowed)
     length = float(match[1]) * factor
     if not 0 < length <= 100_000:
-        raise OutlineError(f"its page's {name} is out of range", value=_clip(text), allowed=f"{allowed}, above zero")
+        raise OutlineError(
+            f"its page's {name} is out of range", value=_clip(text), allowed=f"{allowed}, above zero"
+        )
     return length
 
 
@@ -236,12 +271,19 @@ class _Drawing:
         """Remarks, what was left out and mended among them."""
         out = list(self.remarks)
         if self._left_out:
-            words = ", ".join(f"{what} ({n})" if n > 1 else what for what, n in sorted(self._left_out.items()))
+            words = ", ".join(
+                f"{what} ({n})" if n > 1 else what for what, n in sorted(self._left_out.items())
+            )
             out.append(f"{self.label}: left out, as it holds no outline: {words}")
         if self._open:
-            out.append(f"{self.label}: {self._open} open outline{'s were' if self._open > 1 else ' was'} closed by a straight line")
+            out.append(
+                f"{self.label}: {self._open} open outline{'s were' if self._open > 1 else ' was'}"
+                " closed by a straight line"
+            )
         if self._flat:
-            out.append(f"{self.label}: {self._flat} outline{'s' if self._flat > 1 else ''} without area left out")
+            out.append(
+                f"{self.label}: {self._flat} outline{'s' if self._flat > 1 else ''} without area left out"
+            )
         return out
 
     def filled(self, page: FloatArray, identity: str | None) -> Iterator[BaseGeometry]:
@@ -252,12 +294,17 @@ class _Drawing:
                 yield from self._walk(child, page, style, ())
             return
         if identity in self._twice:
-            raise OutlineError("more than one element has this id", value=_clip(identity), allowed="an id of its own")
+            raise OutlineError(
+                "more than one element has this id", value=_clip(identity), allowed="an id of its own"
+            )
         element = self._by_id.get(identity)
         if element is None:
             close = get_close_matches(identity, self._by_id, n=1, cutoff=0.3)
             raise OutlineError(
-                "no element has this id", value=_clip(identity), allowed=_clip(", ".join(self._by_id) or "the drawing has no ids"), nearest=close[0] if close else ""
+                "no element has this id",
+                value=_clip(identity),
+                allowed=_clip(", ".join(self._by_id) or "the drawing has no ids"),
+                nearest=close[0] if close else "",
             )
         chain = [element]
         while chain[-1] in self._parents:
@@ -267,7 +314,9 @@ class _Drawing:
             style = self._inherit(ancestor, style)
             if ancestor is not self.root:
                 if _short(ancestor.tag) == "svg":
-                    raise self._error(ancestor, "is a page within the page", allowed="one page; flatten it first")
+                    raise self._error(
+                        ancestor, "is a page within the page", allowed="one page; flatten it first"
+                    )
                 matrix = matrix @ self._transform(ancestor)
         if element is self.root:
             yield from self.filled(page, None)
@@ -276,13 +325,18 @@ class _Drawing:
         else:
             yield from self._walk(element, matrix, style, ())
 
-    def _walk(self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]) -> Iterator[BaseGeometry]:
+    def _walk(
+        self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]
+    ) -> Iterator[BaseGeometry]:
         if not isinstance(element.tag, str) or not element.tag.startswith(_SVG):
             return  # another program's own notes
         tag = _short(element.tag)
         self._visited += 1
         if self._visited > MOST_ELEMENTS:
-            raise OutlineError("its uses of uses grow too many", allowed=f"at most {MOST_ELEMENTS} elements when all are spelt out")
+            raise OutlineError(
+                "its uses of uses grow too many",
+                allowed=f"at most {MOST_ELEMENTS} elements when all are spelt out",
+            )
         if tag in _UNDRAWN:
             return
         if tag == "svg":
@@ -303,14 +357,23 @@ class _Drawing:
         elif style.visible:
             yield from self._shape(element, tag, matrix, style)
 
-    def _content(self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]) -> Iterator[BaseGeometry]:
+    def _content(
+        self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]
+    ) -> Iterator[BaseGeometry]:
         for child in element:
             yield from self._walk(child, matrix, style, used)
 
-    def _used(self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]) -> Iterator[BaseGeometry]:
+    def _used(
+        self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]
+    ) -> Iterator[BaseGeometry]:
         target = next((element.get(name) for name in _HREF if element.get(name)), None)
         if not target or not target.startswith("#"):
-            raise self._error(element, "refers to something outside the file", value=_clip(target or ""), allowed='href="#..." of an element in the same file')
+            raise self._error(
+                element,
+                "refers to something outside the file",
+                value=_clip(target or ""),
+                allowed='href="#..." of an element in the same file',
+            )
         identity = target[1:]
         if identity in used:
             raise self._error(element, f"refers to itself through #{_clip(identity)}", allowed="no circles")
@@ -323,18 +386,27 @@ class _Drawing:
         shift[:2, 2] = self._length(element, "x"), self._length(element, "y")
         if _short(found.tag) == "symbol":
             if found.get("viewBox") is not None:
-                raise self._error(found, "is a symbol with a page of its own", allowed="symbols without viewBox; flatten it first")
+                raise self._error(
+                    found,
+                    "is a symbol with a page of its own",
+                    allowed="symbols without viewBox; flatten it first",
+                )
             self._refuse_cut(found)
             yield from self._content(found, matrix @ shift, self._inherit(found, style), (*used, identity))
         else:
             yield from self._walk(found, matrix @ shift, style, (*used, identity))
 
-    def _shape(self, element: ET.Element, tag: str, matrix: FloatArray, style: _Style) -> Iterator[BaseGeometry]:
+    def _shape(
+        self, element: ET.Element, tag: str, matrix: FloatArray, style: _Style
+    ) -> Iterator[BaseGeometry]:
         rings: list[FloatArray] = []
         for ring, closed in self._subpaths(element, tag, matrix):
             self._points += len(ring)
             if self._points > MOST_POINTS:
-                raise OutlineError("its outlines have too many points", allowed=f"at most {MOST_POINTS} when curves are made chords of {CHORD_ERROR_MM * 1000:g} um")
+                raise OutlineError(
+                    "its outlines have too many points",
+                    allowed=f"at most {MOST_POINTS}, with curves as chords {CHORD_ERROR_MM * 1000:g} um off",
+                )
             if len(ring) < 3 or np.ptp(ring, axis=0).max() < 1e-9:
                 self._flat += 1
                 continue
@@ -348,7 +420,8 @@ class _Drawing:
             rule = "even-odd" if style.fill_rule == "evenodd" else "non-zero"
             alone = sum(abs(_signed_area(ring)) for ring in rings)
             self.remarks.append(
-                f"{self.label}: {self._name(element)} crosses itself; filled by its {rule} rule it has {geometry.area:.6g} mm2 "
+                f"{self.label}: {self._name(element)} crosses itself; "
+                f"filled by its {rule} rule it has {geometry.area:.6g} mm2 "
                 f"(its outlines, taken as drawn, enclose {alone:.6g} mm2)"
             )
         if geometry.area < _SMALLEST_MM2:
@@ -356,7 +429,9 @@ class _Drawing:
             return
         yield geometry
 
-    def _subpaths(self, element: ET.Element, tag: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, bool]]:
+    def _subpaths(
+        self, element: ET.Element, tag: str, matrix: FloatArray
+    ) -> Iterator[tuple[FloatArray, bool]]:
         """(points in mm, whether closed by the drawing itself) of every subpath of a shape."""
         if tag == "path":
             try:
@@ -366,7 +441,12 @@ class _Drawing:
         elif tag in ("polygon", "polyline"):
             numbers = _all_numbers(element.get("points", ""), None)
             if numbers is None or len(numbers) % 2:
-                raise self._error(element, "has points that are no pairs of numbers", value=_clip(element.get("points", "")), allowed="pairs of numbers")
+                raise self._error(
+                    element,
+                    "has points that are no pairs of numbers",
+                    value=_clip(element.get("points", "")),
+                    allowed="pairs of numbers",
+                )
             if numbers:
                 yield _apply(matrix, np.array(numbers).reshape(-1, 2)), tag == "polygon"
         elif tag == "rect":
@@ -396,7 +476,12 @@ class _Drawing:
             yield _apply(matrix, np.array([[x, y], [x + wide, y], [x + wide, y + high], [x, y + high]])), True
             return
         quarter = math.pi / 2
-        corners = [((x + wide - rx, y + ry), -1), ((x + wide - rx, y + high - ry), 0), ((x + rx, y + high - ry), 1), ((x + rx, y + ry), 2)]
+        corners = [
+            ((x + wide - rx, y + ry), -1),
+            ((x + wide - rx, y + high - ry), 0),
+            ((x + rx, y + high - ry), 1),
+            ((x + rx, y + ry), 2),
+        ]
         pieces = [_arc_points(matrix, np.array(c), rx, ry, 0.0, n * quarter, quarter) for c, n in corners]
         yield np.concatenate(pieces), True
 
@@ -408,7 +493,12 @@ class _Drawing:
         match = re.fullmatch(rf"\s*({_NUMBER})\s*([a-zA-Z%]*)\s*", text, re.ASCII)
         factor = _UNITS_MM.get(match[2].lower()) if match else None
         if match is None or factor is None or abs(float(match[1])) > _LARGEST:
-            raise self._error(element, f"has {name} that is no length here", value=_clip(text), allowed="a number, or one in mm, cm, in, pt, px")
+            raise self._error(
+                element,
+                f"has {name} that is no length here",
+                value=_clip(text),
+                allowed="a number, or one in mm, cm, in, pt, px",
+            )
         return float(match[1]) * factor / _MM_PER_PX
 
     def _transform(self, element: ET.Element) -> FloatArray:
@@ -420,25 +510,38 @@ class _Drawing:
             return np.eye(3)
         matrix = np.eye(3)
         at, count = 0, 0
-        pattern = re.compile(r"[\s,]*(matrix|translate|scale|rotate|skewX|skewY)\s*\(([^()]*)\)[\s,]*", re.ASCII)
+        pattern = re.compile(
+            r"[\s,]*(matrix|translate|scale|rotate|skewX|skewY)\s*\(([^()]*)\)[\s,]*", re.ASCII
+        )
         while at < len(text):
             match = pattern.match(text, at)
             numbers = _all_numbers(match[2], None) if match else None
             one = _transform_matrix(match[1], numbers) if match and numbers is not None else None
             count += 1
             if match is None or one is None or count > DEEPEST:
-                raise self._error(element, "has a transform that cannot be read", value=_clip(text), allowed="matrix, translate, scale, rotate, skewX, skewY with numbers")
+                raise self._error(
+                    element,
+                    "has a transform that cannot be read",
+                    value=_clip(text),
+                    allowed="matrix, translate, scale, rotate, skewX, skewY with numbers",
+                )
             matrix = matrix @ one
             at = match.end()
         size = float(np.abs(matrix).max())
         if not math.isfinite(size) or size > _LARGEST or abs(np.linalg.det(matrix[:2, :2])) < 1e-12:
-            raise self._error(element, "has a transform that flattens or blows up its content", value=_clip(text))
+            raise self._error(
+                element, "has a transform that flattens or blows up its content", value=_clip(text)
+            )
         return matrix
 
     def _refuse_cut(self, element: ET.Element) -> None:
         for name in ("clip-path", "mask"):
             if self._property(element, name) not in (None, "none"):
-                raise self._error(element, f"is cut by a {name}", allowed="outlines that are already cut: apply it in the drawing program")
+                raise self._error(
+                    element,
+                    f"is cut by a {name}",
+                    allowed="outlines that are already cut: apply it in the drawing program",
+                )
 
     def _inherit(self, element: ET.Element, style: _Style) -> _Style:
         rule, visibility = self._property(element, "fill-rule"), self._property(element, "visibility")
@@ -473,8 +576,19 @@ class _Drawing:
                     key = selector.strip()
                     if re.fullmatch(r"[.#]?[\w-]+|\*", key):
                         out.setdefault(key, {}).update(_declarations(body))
-                    elif set(_declarations(body)) & {"fill-rule", "display", "visibility", "clip-path", "mask", "transform"}:
-                        raise OutlineError("its style sheet has a selector that is not understood", value=_clip(key), allowed="element, .class or #id")
+                    elif set(_declarations(body)) & {
+                        "fill-rule",
+                        "display",
+                        "visibility",
+                        "clip-path",
+                        "mask",
+                        "transform",
+                    }:
+                        raise OutlineError(
+                            "its style sheet has a selector that is not understood",
+                            value=_clip(key),
+                            allowed="element, .class or #id",
+                        )
         return out
 
     def _leave_out(self, what: str) -> None:
@@ -484,10 +598,12 @@ class _Drawing:
         tag = _short(element.tag)
         if identity := element.get("id"):
             return f'<{tag} id="{_clip(identity)}">'
-        same = [e for e in self.root.iter(element.tag)]
+        same = list(self.root.iter(element.tag))
         return f"<{tag}> number {same.index(element) + 1}"
 
-    def _error(self, element: ET.Element, problem: str, *, value: str = "", allowed: str = "") -> OutlineError:
+    def _error(
+        self, element: ET.Element, problem: str, *, value: str = "", allowed: str = ""
+    ) -> OutlineError:
         return OutlineError(f"{self._name(element)} {problem}", value=value, allowed=allowed)
 
 
@@ -518,7 +634,9 @@ def _winding(rings: list[FloatArray], points: FloatArray) -> NDArray[np.int64]:
         near = np.flatnonzero(((points >= low) & (points <= high)).all(axis=1))
         work += len(near) * len(ring)
         if work > 5_000_000_000:
-            raise OutlineError("its outlines cross too often", allowed="simpler outlines: unite them in the drawing program")
+            raise OutlineError(
+                "its outlines cross too often", allowed="simpler outlines: unite them in the drawing program"
+            )
         x0, y0 = ring.T
         x1, y1 = np.roll(ring, -1, axis=0).T
         for index in near:
@@ -532,7 +650,8 @@ def _winding(rings: list[FloatArray], points: FloatArray) -> NDArray[np.int64]:
 _COMMAND = re.compile(r"([MmZzLlHhVvCcSsQqTtAa])")
 _SIZES = {"M": 2, "L": 2, "H": 1, "V": 1, "C": 6, "S": 4, "Q": 4, "T": 2, "A": 7, "Z": 0}
 _ARC = re.compile(
-    rf"[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*([01])[\s,]*([01])[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*",
+    rf"[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*([01])[\s,]*([01])"
+    rf"[\s,]*({_NUMBER})[\s,]*({_NUMBER})[\s,]*",
     re.ASCII,
 )
 
@@ -630,7 +749,7 @@ def _raised(here: FloatArray, corners: FloatArray) -> FloatArray:
 
 
 def _chords(cubic: FloatArray) -> FloatArray:
-    """Points of a cubic (4, 2) in mm after its first, so close that no chord leaves it by more than the error.
+    """Points of a cubic (4, 2) in mm after its first; no chord leaves it by more than the error.
 
     The chord of a piece of length h in the parameter is off by at most h^2 / 8 times the
     largest second derivative, which for a cubic is 6 times the larger second difference.
@@ -639,7 +758,12 @@ def _chords(cubic: FloatArray) -> FloatArray:
     bend = 6 * float(np.hypot(second[:, 0], second[:, 1]).max())
     count = min(max(1, math.ceil(math.sqrt(bend / (8 * CHORD_ERROR_MM)))), MOST_POINTS)
     u = np.arange(1, count + 1)[:, None] / count
-    return (1 - u) ** 3 * cubic[0] + 3 * (1 - u) ** 2 * u * cubic[1] + 3 * (1 - u) * u**2 * cubic[2] + u**3 * cubic[3]
+    return np.asarray(
+        (1 - u) ** 3 * cubic[0]
+        + 3 * (1 - u) ** 2 * u * cubic[1]
+        + 3 * (1 - u) * u**2 * cubic[2]
+        + u**3 * cubic[3]
+    )
 
 
 def _arc(matrix: FloatArray, here: FloatArray, row: FloatArray, end: FloatArray) -> FloatArray:
@@ -668,7 +792,9 @@ def _arc(matrix: FloatArray, here: FloatArray, row: FloatArray, end: FloatArray)
     return points
 
 
-def _arc_points(matrix: FloatArray, centre: FloatArray, rx: float, ry: float, turn: float, first: float, sweep: float) -> FloatArray:
+def _arc_points(
+    matrix: FloatArray, centre: FloatArray, rx: float, ry: float, turn: float, first: float, sweep: float
+) -> FloatArray:
     """Points on an elliptical arc in mm, both ends included, chords within the error."""
     largest = max(rx, ry) * float(np.linalg.norm(matrix[:2, :2], 2))
     step = 2 * math.acos(max(1 - CHORD_ERROR_MM / largest, -0.5)) if largest > 0 else math.pi
@@ -681,7 +807,14 @@ def _arc_points(matrix: FloatArray, centre: FloatArray, rx: float, ry: float, tu
 
 def _transform_matrix(kind: str, v: list[float]) -> FloatArray | None:
     """The 3 x 3 matrix of one transform function, None where its arguments do not fit."""
-    counts = {"matrix": (6,), "translate": (1, 2), "scale": (1, 2), "rotate": (1, 3), "skewX": (1,), "skewY": (1,)}
+    counts = {
+        "matrix": (6,),
+        "translate": (1, 2),
+        "scale": (1, 2),
+        "rotate": (1, 3),
+        "skewX": (1,),
+        "skewY": (1,),
+    }
     if len(v) not in counts[kind] or any(abs(number) > _LARGEST for number in v):
         return None
     out = np.eye(3)
@@ -703,7 +836,7 @@ def _transform_matrix(kind: str, v: list[float]) -> FloatArray | None:
 
 
 def _apply(matrix: FloatArray, points: FloatArray) -> FloatArray:
-    return points @ matrix[:2, :2].T + matrix[:2, 2]
+    return np.asarray(points @ matrix[:2, :2].T + matrix[:2, 2])
 
 
 def _signed_area(ring: FloatArray) -> float:
@@ -727,7 +860,11 @@ def _declarations(text: str) -> Mapping[str, str]:
 
 
 def _bad_path(text: str) -> OutlineError:
-    return OutlineError("has path data that cannot be read", value=_clip(text), allowed="path commands with numbers, as SVG has them")
+    return OutlineError(
+        "has path data that cannot be read",
+        value=_clip(text),
+        allowed="path commands with numbers, as SVG has them",
+    )
 
 
 def _short(tag: Any) -> str:

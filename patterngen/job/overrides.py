@@ -105,7 +105,13 @@ def _resolve(address: str, parts: list[str | int], value: Any, data: Mapping[str
         return Override((str(first),), str(first), value)
     if first not in TABLES:
         known = ["title", *TABLES]
-        return Fault(SET, address, "no such table in a preset", allowed=", ".join(known), nearest=nearest(str(first), known))
+        return Fault(
+            SET,
+            address,
+            "no such table in a preset",
+            allowed=", ".join(known),
+            nearest=nearest(str(first), known),
+        )
     name, rest = str(first), parts[1:]
     steps: tuple[str | int, ...] = (name,)
     path = name
@@ -117,7 +123,14 @@ def _resolve(address: str, parts: list[str | int], value: Any, data: Mapping[str
             names = [str(e["name"]) for e in entries if isinstance(e, Mapping) and "name" in e]
             wanted = str(rest[0]) if rest else ""
             near = nearest(wanted, names)
-            return Fault(SET, address, f"no [[{name}]] of that name", shown(wanted), allowed=", ".join(names) or f"[[{name}]] has no entry", nearest=near)
+            return Fault(
+                SET,
+                address,
+                f"no [[{name}]] of that name",
+                shown(wanted),
+                allowed=", ".join(names) or f"[[{name}]] has no entry",
+                nearest=near,
+            )
         steps, path = (name, index), table_path(name, index, entries[index])
         rest = rest[used:]
     if not rest:

@@ -58,20 +58,26 @@ def read(data: bytes, *, label: str) -> Picture:
     """The first page of a picture file, upright.  Raises `PictureError`."""
     import warnings
 
-    from PIL import Image as images
-    from PIL import ImageFile, ImageOps, PngImagePlugin, TiffImagePlugin, JpegImagePlugin  # noqa: F401
+    from PIL import Image as Images
+
+    # the plugins named here are the only ones that need to be loaded
+    from PIL import ImageFile, JpegImagePlugin, PngImagePlugin, TiffImagePlugin  # noqa: F401
 
     kind = _kind(data)
     ImageFile.LOAD_TRUNCATED_IMAGES = False
-    images.MAX_IMAGE_PIXELS = None  # the cap below is lower and comes first
+    Images.MAX_IMAGE_PIXELS = None  # the cap below is lower and comes first
     remarks: list[str] = []
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
         try:
-            image: Image = images.open(io.BytesIO(data), formats=[kind])
+            image: Image = Images.open(io.BytesIO(data), formats=[kind])
             wide, high = image.size
             if wide < 1 or high < 1 or wide * high > MOST_PIXELS:
-                raise PictureError("has too many pixels", value=f"{wide} x {high}", allowed=f"at most {MOST_PIXELS // 10**6} million")
+                raise PictureError(
+                    "has too many pixels",
+                    value=f"{wide} x {high}",
+                    allowed=f"at most {MOST_PIXELS // 10**6} million",
+                )
             if _more_pages(data, kind):
                 remarks.append(f"{label}: only the first page is used")
             image.load()
@@ -89,7 +95,6 @@ def read(data: bytes, *, label: str) -> Picture:
         remarks.append(f"{label}: the picture is a single pixel, an even tone")
     elif turned.min() == _white(turned):
         remarks.append(f"{label}: the picture is all white (or all transparent); it prints nothing")
-    del ImageOps
     return Picture(np.ascontiguousarray(turned), remarks)
 
 
@@ -102,17 +107,19 @@ def _kind(data: bytes) -> str:
             raise PictureError(f"is {words}, by its content")
     head = data[:512].lstrip(b"\xef\xbb\xbf \t\r\n").lower()
     if head.startswith((b"<svg", b"<?xml", b"<!doctype")):
-        raise PictureError("is an SVG drawing, by its content", allowed=f"{_ALLOWED}; a drawing may be an area")
+        raise PictureError(
+            "is an SVG drawing, by its content", allowed=f"{_ALLOWED}; a drawing may be an area"
+        )
     raise PictureError("is no picture, by its content" if data else "is empty")
 
 
 def _more_pages(data: bytes, kind: str) -> bool:
     """Whether there is a second page; only that one is looked for, as a file may claim any number."""
-    from PIL import Image as images
+    from PIL import Image as Images
 
     if kind != "TIFF":
         return False
-    with images.open(io.BytesIO(data), formats=[kind]) as image:
+    with Images.open(io.BytesIO(data), formats=[kind]) as image:
         try:
             image.seek(1)
         except EOFError:
@@ -136,7 +143,10 @@ def _grey(image: Image, inverted: bool) -> NDArray[Any]:
         return _sixteen_bits(image, inverted)
     if mode in ("CMYK", "LAB", "YCbCr", "HSV", "I", "F"):
         words = {"CMYK": "CMYK", "LAB": "CIELAB", "I": "32 bit whole numbers", "F": "floating point numbers"}
-        raise PictureError(f"holds {words.get(mode, mode)}, of which no one true grey can be made here", allowed=f"{_ALLOWED}: convert it first")
+        raise PictureError(
+            f"holds {words.get(mode, mode)}, of which no one true grey can be made here",
+            allowed=f"{_ALLOWED}: convert it first",
+        )
     clear = "transparency" in image.info or mode in ("LA", "RGBA", "PA", "La", "RGBa")
     if mode == "1":
         return np.asarray(image.convert("L"), dtype=np.uint8)
@@ -148,12 +158,12 @@ def _grey(image: Image, inverted: bool) -> NDArray[Any]:
 
 
 def _sixteen_bits(image: Image, inverted: bool) -> NDArray[Any]:
-    values = np.asarray(image).astype(np.uint16)
+    values: NDArray[Any] = np.array(image).astype(np.uint16)
     transparent = image.info.get("transparency")
     if inverted:
         values = 65535 - values
     if isinstance(transparent, int):
-        values = np.where(values == transparent, np.uint16(65535), values)
+        values[values == transparent] = 65535
     return values
 
 
@@ -163,7 +173,7 @@ def _colour(image: Image, clear: bool) -> NDArray[Any]:
     out = np.empty((high, wide), dtype=np.uint16)
     for top in range(0, high, _ROWS_AT_ONCE):
         strip = np.asarray(image.crop((0, top, wide, min(top + _ROWS_AT_ONCE, high))), dtype=np.float32)
-        grey = strip[..., :3] @ np.array(_LUMINANCE, dtype=np.float32)
+        grey: NDArray[Any] = strip[..., :3] @ np.array(_LUMINANCE, dtype=np.float32)
         if clear:
             cover = strip[..., 3] / 255
             grey = grey * cover + 255 * (1 - cover)

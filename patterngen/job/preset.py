@@ -11,13 +11,12 @@ from pydantic_core import CoreSchema, core_schema
 
 from patterngen import registry
 from patterngen.model.fields import (
+    Angle,
     AngleError,
     AngleOrChoose,
-    Angle,
     ChoiceField,
     Illuminance,
     Lab,
-    Length,
     LengthOrZero,
     NameField,
     NumberField,
@@ -88,11 +87,19 @@ class ViewingTable(Table):
     """Who looks, from where, in what light."""
 
     distance: PositiveLength = Field(350.0, description="reading distance")
-    far: PositiveLength | None = Field(None, description="where the print must look even; default twice the reading distance")
-    limit: Annotated[float, NumberField("limit of visibility for periods up to 1 mm", 0.0, 1000.0, above=True)] = 4.0
-    limit_coarse: Annotated[float, NumberField("limit of visibility for longer periods", 0.0, 1000.0, above=True)] = 1.0
+    far: PositiveLength | None = Field(
+        None, description="where the print must look even; default twice the reading distance"
+    )
+    limit: Annotated[
+        float, NumberField("limit of visibility for periods up to 1 mm", 0.0, 1000.0, above=True)
+    ] = 4.0
+    limit_coarse: Annotated[
+        float, NumberField("limit of visibility for longer periods", 0.0, 1000.0, above=True)
+    ] = 1.0
     light: Illuminance = Field(500.0, description="light on the print")
-    eye: Annotated[str, ChoiceField("an eye model", lambda: registry.names("patterngen.vision"))] = "barten1999"
+    eye: Annotated[str, ChoiceField("an eye model", lambda: registry.names("patterngen.vision"))] = (
+        "barten1999"
+    )
 
 
 class GainTable(Table):
@@ -174,10 +181,14 @@ class ScreenTable(GainTable):
     ink: InkName
     kind: Annotated[str, ChoiceField("a kind of screen", lambda: registry.names("patterngen.screens"))]
     ruling: RulingOrChoose | None = Field(None, description="left out: derived by a rule")
-    angle: AngleOrChoose | None = Field(None, description="counter-clockwise from the sheet's horizontal; left out: derived by a rule")
+    angle: AngleOrChoose | None = Field(
+        None, description="counter-clockwise from the sheet's horizontal; left out: derived by a rule"
+    )
     tone: Tone
     area: AreaField = "sheet"
-    origin: Point = Field((0.0, 0.0), description="where a dot or line centre lies, from the trim's lower left corner")
+    origin: Point = Field(
+        (0.0, 0.0), description="where a dot or line centre lies, from the trim's lower left corner"
+    )
 
 
 class GridTable(Table):
@@ -193,7 +204,10 @@ class GridTable(Table):
 def press_table() -> type[PressFields]:
     """The [press] table: its own keys and one for every limit there is."""
     limits: dict[str, Any] = {
-        name: (Annotated[float, QuantityField(kind.quantity, low=0.0)] | None, Field(None, description=kind.meaning))
+        name: (
+            Annotated[float, QuantityField(kind.quantity, low=0.0)] | None,
+            Field(None, description=kind.meaning),
+        )
         for name, kind in _limits.KINDS.items()
     }
     return create_model("PressTable", __base__=PressFields, __doc__=PressFields.__doc__, **limits)
@@ -202,16 +216,19 @@ def press_table() -> type[PressFields]:
 @cache
 def kinds(family: str) -> dict[str, type[Table]]:
     """The full table model of every kind in a family ("screen" or "grid"): common keys and the kind's own."""
-    base: type[Table] = {"screen": ScreenTable, "grid": GridTable}[family]
+    families: dict[str, type[Table]] = {"screen": ScreenTable, "grid": GridTable}
+    base = families[family]
     out: dict[str, type[Table]] = {}
     for name, module in registry.modules(f"patterngen.{family}s").items():
         words = "".join(part.capitalize() for part in name.split("-"))
-        out[name] = create_model(
+        fields: dict[str, Any] = {"kind": (Literal[name], Field(description=module.SUMMARY))}
+        model: Any = create_model(
             f"{words}{family.capitalize()}",
             __base__=(base, module.Params),
             __doc__=module.SUMMARY,
-            kind=(Literal[name], Field(description=module.SUMMARY)),
+            **fields,
         )
+        out[name] = model
     return out
 
 
@@ -231,7 +248,8 @@ class TableKind:
 
     def base(self, name: str) -> type[Table]:
         """The model for a table whose kind is not known."""
-        return {"screen": ScreenTable, "grid": GridTable}[self.family] if self.family else _plain_models()[name]
+        families: dict[str, type[Table]] = {"screen": ScreenTable, "grid": GridTable}
+        return families[self.family] if self.family else _plain_models()[name]
 
 
 TABLES: dict[str, TableKind] = {

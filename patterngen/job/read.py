@@ -48,14 +48,25 @@ def load(path_or_dict: str | os.PathLike[str] | Mapping[str, Any], overrides: It
     elif isinstance(path_or_dict, str | os.PathLike):
         source = _Source.from_file(Path(path_or_dict))
     else:
-        raise InputError(Fault("preset", "", "neither the path of a preset nor a dict", allowed="a path or a dict"))
+        raise InputError(
+            Fault("preset", "", "neither the path of a preset nor a dict", allowed="a path or a dict")
+        )
     return _read(source, tuple(overrides))
 
 
 class _Source:
     """A preset's text and data, where it came from, and what was normalised on the way."""
 
-    def __init__(self, *, where: str, name: str, folder: Path | None, text: str, data: dict[str, Any], remarks: list[str]) -> None:
+    def __init__(
+        self,
+        *,
+        where: str,
+        name: str,
+        folder: Path | None,
+        text: str,
+        data: dict[str, Any],
+        remarks: list[str],
+    ) -> None:
         self.where, self.name, self.folder = where, name, folder
         self.text, self.data, self.remarks = text, data, remarks
 
@@ -66,9 +77,23 @@ class _Source:
         text, remarks = gates.decode(data, where=where)
         if problem := name_problem(path.stem):
             raise InputError(
-                Fault(where, "", f"the file's name becomes the job's name: {problem}", shown(path.stem), "letters a-z, digits, dash, underscore, dots inside", nearest_name(path.stem))
+                Fault(
+                    where,
+                    "",
+                    f"the file's name becomes the job's name: {problem}",
+                    shown(path.stem),
+                    "letters a-z, digits, dash, underscore, dots inside",
+                    nearest_name(path.stem),
+                )
             )
-        return cls(where=where, name=path.stem, folder=path.resolve().parent, text=text, data=gates.parse(text, where=where), remarks=remarks)
+        return cls(
+            where=where,
+            name=path.stem,
+            folder=path.resolve().parent,
+            text=text,
+            data=gates.parse(text, where=where),
+            remarks=remarks,
+        )
 
     @classmethod
     def from_data(cls, data: Mapping[str, Any]) -> _Source:
@@ -80,7 +105,14 @@ class _Source:
         text = as_toml(plain)
         title = plain.get("title")
         name = nearest_name(title.lower()) if isinstance(title, str) else ""
-        return cls(where=where, name=name or "job", folder=Path.cwd(), text=text, data=gates.parse(text, where=where), remarks=[])
+        return cls(
+            where=where,
+            name=name or "job",
+            folder=Path.cwd(),
+            text=text,
+            data=gates.parse(text, where=where),
+            remarks=[],
+        )
 
 
 def _plain_data(data: object, depth: int = 0) -> object:
@@ -112,7 +144,7 @@ def _read(source: _Source, texts: tuple[str, ...]) -> Job:
 
 
 def _told(faults: list[Fault], set_paths: set[str]) -> list[Fault]:
-    """Faults of values that came from the command line name it; beyond a hundred only their number is told."""
+    """Faults of values from the command line name it; beyond a hundred only their number is told."""
     from dataclasses import replace
 
     told = [replace(f, where=SET) if f.key in set_paths else f for f in dict.fromkeys(faults)]
@@ -140,7 +172,14 @@ class _Readings:
             raw = data.get(name)
             if raw is None:
                 if kind.needed:
-                    faults.append(Fault(where, name, "this table is missing", allowed=f"[[{name}]], one or more" if kind.many else f"[{name}]"))
+                    faults.append(
+                        Fault(
+                            where,
+                            name,
+                            "this table is missing",
+                            allowed=f"[[{name}]], one or more" if kind.many else f"[{name}]",
+                        )
+                    )
                     continue
                 raw = [] if kind.many else {}
             self._read_tables(name, raw, where, faults)
@@ -155,20 +194,40 @@ class _Readings:
             self.title = TITLE.read(data["title"])
         except PydanticCustomError as error:
             told = error.context or {}
-            faults.append(Fault(where, "title", told["problem"], shown(data["title"]), told["allowed"], told["nearest"]))
+            faults.append(
+                Fault(where, "title", told["problem"], shown(data["title"]), told["allowed"], told["nearest"])
+            )
 
     def _read_tables(self, name: str, raw: object, where: str, faults: list[Fault]) -> None:
         kind = TABLES[name]
         if not kind.many:
             if not isinstance(raw, Mapping):
                 nearest_form = f"[{name}]" if isinstance(raw, list) else ""
-                faults.append(Fault(where, name, "not a table", shown(raw), allowed=f"one table [{name}]", nearest=nearest_form))
+                faults.append(
+                    Fault(
+                        where,
+                        name,
+                        "not a table",
+                        shown(raw),
+                        allowed=f"one table [{name}]",
+                        nearest=nearest_form,
+                    )
+                )
                 return
             self._read_one(name, raw, name, where, faults)
             return
         if not isinstance(raw, list):
             nearest_form = f"[[{name}]]" if isinstance(raw, Mapping) else ""
-            faults.append(Fault(where, name, "not a list of tables", shown(raw), allowed=f"[[{name}]], once for each", nearest=nearest_form))
+            faults.append(
+                Fault(
+                    where,
+                    name,
+                    "not a list of tables",
+                    shown(raw),
+                    allowed=f"[[{name}]], once for each",
+                    nearest=nearest_form,
+                )
+            )
             return
         if kind.needed and not raw:
             faults.append(Fault(where, name, "this table is missing", allowed=f"[[{name}]], one or more"))
@@ -183,7 +242,9 @@ class _Readings:
             else:
                 self._read_one(name, table, path, where, faults)
 
-    def _read_one(self, name: str, raw: Mapping[str, Any], path: str, where: str, faults: list[Fault]) -> None:
+    def _read_one(
+        self, name: str, raw: Mapping[str, Any], path: str, where: str, faults: list[Fault]
+    ) -> None:
         kind = TABLES[name]
         models = kind.models(name)
         known = raw.get("kind") if kind.family else ""
@@ -200,17 +261,42 @@ class _Readings:
 
 
 def _needed() -> str:
-    tables = [f"[[{name}]]" if kind.many else f"[{name}] with size" for name, kind in TABLES.items() if kind.needed]
+    tables = [
+        f"[[{name}]]" if kind.many else f"[{name}] with size" for name, kind in TABLES.items() if kind.needed
+    ]
     return f"patterngen = {VERSION}, title, {', '.join(tables)}"
 
 
 def _version_faults(version: object, where: str) -> list[Fault]:
     if version is None:
-        return [Fault(where, "patterngen", "the version of the preset is missing", allowed=f"patterngen = {VERSION} at the top")]
+        return [
+            Fault(
+                where,
+                "patterngen",
+                "the version of the preset is missing",
+                allowed=f"patterngen = {VERSION} at the top",
+            )
+        ]
     if isinstance(version, bool) or not isinstance(version, int) or version < 1:
-        return [Fault(where, "patterngen", "not the version of a preset", shown(version), nearest=f"patterngen = {VERSION}")]
+        return [
+            Fault(
+                where,
+                "patterngen",
+                "not the version of a preset",
+                shown(version),
+                nearest=f"patterngen = {VERSION}",
+            )
+        ]
     if version > VERSION:
-        return [Fault(where, "patterngen", "the preset was written for a newer version of this program", shown(version), allowed=f"presets of version {VERSION}")]
+        return [
+            Fault(
+                where,
+                "patterngen",
+                "the preset was written for a newer version of this program",
+                shown(version),
+                allowed=f"presets of version {VERSION}",
+            )
+        ]
     return []
 
 
@@ -221,13 +307,23 @@ def _unknown_keys(data: Mapping[str, Any], where: str) -> list[Fault]:
             out.append(Fault(where, key, LATER[key]))
         elif key not in _KEYS:
             near = nearest(key, (*_KEYS, *LATER))
-            out.append(Fault(where, shown(key).strip('"'), "no such table or key in a preset", allowed=", ".join(_KEYS), nearest=near))
+            out.append(
+                Fault(
+                    where,
+                    shown(key).strip('"'),
+                    "no such table or key in a preset",
+                    allowed=", ".join(_KEYS),
+                    nearest=near,
+                )
+            )
     return out
 
 
 def _job(source: _Source, readings: _Readings, art: Any, set_paths: set[str]) -> Job:
     tables = readings.tables
-    sheet_table, viewing_table, press_table, paper_table = (tables[name][0] for name in ("sheet", "viewing", "press", "paper"))
+    sheet_table, viewing_table, press_table, paper_table = (
+        tables[name][0] for name in ("sheet", "viewing", "press", "paper")
+    )
     origin = _origins(tables, set_paths)
     remarks = list(source.remarks)
     width_mm, height_mm = sheet_table["size"]
@@ -301,7 +397,9 @@ def _press(reading: TableReading, set_paths: set[str]) -> tuple[Press, dict[str,
     limits = _limits.limits(process)
     for name in _limits.quantities():
         if (value := reading[name]) is not None:
-            limits[name] = _limits.own_limit(name, value, origin=SET if f"press.{name}" in set_paths else "preset")
+            limits[name] = _limits.own_limit(
+                name, value, origin=SET if f"press.{name}" in set_paths else "preset"
+            )
     press = Press(
         process=process,
         imager_per_mm=reading["imager"],
@@ -323,21 +421,29 @@ def _turned(angle_deg: float, path: str, remarks: list[str]) -> float:
     return angle_deg % 360.0
 
 
-def _screen(reading: TableReading, press: Press, sheet: SheetSize, art: Any, remarks: list[str]) -> ScreenRequest:
+def _screen(
+    reading: TableReading, press: Press, sheet: SheetSize, art: Any, remarks: list[str]
+) -> ScreenRequest:
     ruling, angle = reading["ruling"], reading["angle"]
     chosen = tuple(key for key, value in (("ruling", ruling), ("angle", angle)) if value == CHOOSE)
     own = {k: v for k, v in reading.values.items() if k not in check.COMMON_SCREEN_KEYS and k != "shape"}
     if chosen:
         own["choose"] = chosen
     area = art.areas.get(reading.path) or Area(sheet.box_mm)
-    tone = art.tone(reading.path, area) if isinstance(reading["tone"], check.ImageTone) else ToneField(constant=reading["tone"], label=check.percent(reading["tone"]))
+    tone = (
+        art.tone(reading.path, area)
+        if isinstance(reading["tone"], check.ImageTone)
+        else ToneField(constant=reading["tone"], label=check.percent(reading["tone"]))
+    )
     return ScreenRequest(
         name=reading["name"],
         ink=reading["ink"],
         kind=reading["kind"],
         shape=reading.get("shape"),
         ruling_per_mm=None if ruling == CHOOSE else ruling,
-        angle_deg=None if angle is None or angle == CHOOSE else _turned(angle, f"{reading.path}.angle", remarks),
+        angle_deg=None
+        if angle is None or angle == CHOOSE
+        else _turned(angle, f"{reading.path}.angle", remarks),
         tone=tone,
         area=area,
         origin_mm=reading["origin"],

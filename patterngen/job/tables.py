@@ -71,7 +71,11 @@ def _sound_values(model: type[BaseModel], raw: Mapping[str, Any], keys: Mapping[
 def shown(value: object) -> str:
     """A value as the preset would write it, shortened."""
     if isinstance(value, str):
-        text = '"' + "".join(c if c.isprintable() else f"\\u{ord(c):04X}" for c in value[: 2 * _LONGEST_SHOWN]) + '"'
+        text = (
+            '"'
+            + "".join(c if c.isprintable() else f"\\u{ord(c):04X}" for c in value[: 2 * _LONGEST_SHOWN])
+            + '"'
+        )
     elif isinstance(value, bool):
         text = "true" if value else "false"
     elif isinstance(value, list | tuple):
@@ -103,7 +107,9 @@ def _fault(detail: ErrorDetails, model: type[BaseModel], path: str, where: str) 
         return Fault(where, key, "this key is missing", allowed=_meaning(model, place))
     if kind == "extra_forbidden":
         keys = _keys_at(model, place[:-1])
-        return Fault(where, key, "no such key here", allowed=", ".join(keys), nearest=nearest(str(place[-1]), keys))
+        return Fault(
+            where, key, "no such key here", allowed=", ".join(keys), nearest=nearest(str(place[-1]), keys)
+        )
     problem, allowed, near = _plain_words(kind, context, value, detail["msg"])
     return Fault(where, key, problem, shown(value), allowed, near)
 
@@ -111,15 +117,31 @@ def _fault(detail: ErrorDetails, model: type[BaseModel], path: str, where: str) 
 def _plain_words(kind: str, context: Mapping[str, Any], value: object, message: str) -> tuple[str, str, str]:
     """(problem, allowed, nearest) for the errors that pydantic itself raises."""
     if kind in ("literal_error", "enum"):
-        words = [word.strip(" '") for word in str(context.get("expected", "")).replace(" or ", ", ").split(",")]
+        words = [
+            word.strip(" '") for word in str(context.get("expected", "")).replace(" or ", ", ").split(",")
+        ]
         near = nearest(value, words) if isinstance(value, str) else ""
-        return "not one of the words that may stand here", ", ".join(f'"{w}"' for w in words), f'"{near}"' if near else ""
+        return (
+            "not one of the words that may stand here",
+            ", ".join(f'"{w}"' for w in words),
+            f'"{near}"' if near else "",
+        )
     if kind in ("bool_type", "bool_parsing"):
-        near = {"true": "true", "yes": "true", "on": "true", "false": "false", "no": "false", "off": "false"}
-        guess = near.get(str(value).strip().lower(), {0: "false", 1: "true"}.get(value, "") if isinstance(value, int) else "")
+        word = str(value).strip().lower()
+        guess = (
+            "true"
+            if word in ("true", "yes", "on", "1")
+            else "false"
+            if word in ("false", "no", "off", "0")
+            else ""
+        )
         return "not a yes or no", "true or false, without quotes", guess
     if kind in ("list_type", "tuple_type"):
-        return "not a list", "a list in square brackets", f"[{shown(value)}]" if not isinstance(value, dict) else ""
+        return (
+            "not a list",
+            "a list in square brackets",
+            f"[{shown(value)}]" if not isinstance(value, dict) else "",
+        )
     if kind == "too_short":
         return f"a list of {context['actual_length']}", f"at least {context['min_length']} entries", ""
     if kind == "too_long":
@@ -132,10 +154,15 @@ def _plain_words(kind: str, context: Mapping[str, Any], value: object, message: 
         return "not a whole number", "a whole number without quotes", ""
     if kind in ("float_type", "float_parsing", "finite_number"):
         return "not a number", "a finite number without quotes", ""
-    bounds = {"greater_than": ("more than", "gt"), "greater_than_equal": ("at least", "ge"), "less_than": ("less than", "lt"), "less_than_equal": ("at most", "le")}
+    bounds = {
+        "greater_than": ("more than", "gt"),
+        "greater_than_equal": ("at least", "ge"),
+        "less_than": ("less than", "lt"),
+        "less_than_equal": ("at most", "le"),
+    }
     if kind in bounds:
-        words, name = bounds[kind]
-        return "out of range", f"{words} {context[name]}", ""
+        relation, name = bounds[kind]
+        return "out of range", f"{relation} {context[name]}", ""
     if kind == "value_error":
         return str(context.get("error", message)), "", ""
     return message[:1].lower() + message[1:], "", ""
@@ -155,7 +182,13 @@ def _keys_at(model: type[BaseModel], place: list[int | str]) -> list[str]:
     here: list[type[BaseModel]] = [model]
     for part in place:
         if isinstance(part, str):
-            here = [inner for m in here for name, info in m.model_fields.items() if part in (name, info.alias) for inner in models_in(info.annotation)]
+            here = [
+                inner
+                for m in here
+                for name, info in m.model_fields.items()
+                if part in (name, info.alias)
+                for inner in models_in(info.annotation)
+            ]
     return [info.alias or name for m in here for name, info in m.model_fields.items()]
 
 

@@ -52,7 +52,9 @@ class _Field:
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
         return core_schema.no_info_plain_validator_function(self.read)
 
-    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
+    def __get_pydantic_json_schema__(
+        self, schema: CoreSchema, handler: GetJsonSchemaHandler
+    ) -> dict[str, Any]:
         return self.schema()
 
 
@@ -76,10 +78,16 @@ class QuantityField(_Field):
         try:
             number = parse(value, self.quantity)
         except QuantityError as error:
-            raise refusal(error.problem, allowed=self._with_choose(error.allowed), nearest=error.nearest) from None
+            raise refusal(
+                error.problem, allowed=self._with_choose(error.allowed), nearest=error.nearest
+            ) from None
         if not (self.low <= number <= self.high) or (self.above and number == self.low):
             unit = str(value).strip(" \t").lstrip("+-.0123456789eE").strip()
-            raise refusal("out of range", allowed=self._with_choose(self.range_words()), nearest=self._bound(number, unit))
+            raise refusal(
+                "out of range",
+                allowed=self._with_choose(self.range_words()),
+                nearest=self._bound(number, unit),
+            )
         return number
 
     def schema(self) -> dict[str, Any]:
@@ -91,7 +99,7 @@ class QuantityField(_Field):
             "type": "string",
             "pattern": f"^\\s*[+]?{minus}([0-9]+([.][0-9]*)?|[.][0-9]+)([eE][+-]?[0-9]+)?\\s*({units})\\s*$",
             "examples": [self._example()],
-            "description": f"{self.quantity.name} with its unit ({', '.join(self.quantity.units)}); {self.range_words()}",
+            "description": f"{self.quantity.name} in {', '.join(self.quantity.units)}; {self.range_words()}",
         }
         if not self.choose:
             return text
@@ -117,7 +125,11 @@ class QuantityField(_Field):
     def _example(self) -> str:
         number = parse(self.quantity.example, self.quantity)
         inside = self.low <= number <= self.high
-        return self.quantity.example if inside else self._outer(self.high if math.isfinite(self.high) else self.low)
+        return (
+            self.quantity.example
+            if inside
+            else self._outer(self.high if math.isfinite(self.high) else self.low)
+        )
 
     def _bound(self, number: float, unit: str) -> str:
         unit = unit if unit in self.quantity.units else self.quantity.unit
@@ -150,7 +162,11 @@ class NumberField(_Field):
             raise refusal("not a finite number", allowed=wanted)
         if not self.low <= value <= self.high or (self.above and value == self.low):
             bound = self.low if value <= self.low else self.high
-            raise refusal("out of range", allowed=wanted, nearest="" if self.above and bound == self.low else plain(bound))
+            raise refusal(
+                "out of range",
+                allowed=wanted,
+                nearest="" if self.above and bound == self.low else plain(bound),
+            )
         return int(value) if self.whole else float(value) + 0.0
 
     def schema(self) -> dict[str, Any]:
@@ -196,7 +212,9 @@ class TextField(_Field):
         if len(text) > self.longest:
             raise refusal(f"a text of {len(text)} characters, too long", allowed=allowed)
         if text != text.strip():
-            raise refusal("blanks at the ends", allowed=allowed, nearest=f'"{text.strip()}"' if text.strip() else "")
+            raise refusal(
+                "blanks at the ends", allowed=allowed, nearest=f'"{text.strip()}"' if text.strip() else ""
+            )
         if not text and not self.empty:
             raise refusal("an empty text", allowed=allowed)
         return text
@@ -254,7 +272,11 @@ class ChoiceField(_Field):
             raise refusal(f"not the name of {self.what}", allowed=allowed)
         if value not in options:
             near = get_close_matches(value.strip().lower().replace("_", "-"), options, n=1, cutoff=0.4)
-            raise refusal(f"no such {self.what.split(' ', 1)[1]}", allowed=allowed, nearest=f'"{near[0]}"' if near else "")
+            raise refusal(
+                f"no such {self.what.split(' ', 1)[1]}",
+                allowed=allowed,
+                nearest=f'"{near[0]}"' if near else "",
+            )
         return value
 
     def schema(self) -> dict[str, Any]:
@@ -272,17 +294,24 @@ class _LabField(_Field):
             raise refusal("not a colour", allowed=allowed, nearest="[95, 0, -2]")
         if any(isinstance(v, bool) or not isinstance(v, int | float) or not math.isfinite(v) for v in value):
             raise refusal("not three finite numbers", allowed=allowed)
-        held = [min(max(float(v), low), high) + 0.0 for v, (low, high) in zip(value, _LAB_BOUNDS, strict=True)]
+        held = [
+            min(max(float(v), low), high) + 0.0 for v, (low, high) in zip(value, _LAB_BOUNDS, strict=True)
+        ]
         if any(a != b for a, b in zip(held, value, strict=True)):
             raise refusal("out of range", allowed=allowed, nearest=f"[{', '.join(plain(v) for v in held)}]")
         return held[0], held[1], held[2]
 
     def schema(self) -> dict[str, Any]:
-        bounds = [{"type": "number", "minimum": low, "maximum": high} for low, high in _LAB_BOUNDS]
+        # not by position: editors' checkers know no `prefixItems` yet
+        low, high = min(low for low, _ in _LAB_BOUNDS), max(high for _, high in _LAB_BOUNDS)
         return {
-            "type": "array", "prefixItems": bounds, "minItems": 3, "maxItems": 3, "items": False,
-            "description": "CIELAB (D50, 2 degree observer)", "examples": [[55, -37, -50]],
-        }  # fmt: skip
+            "type": "array",
+            "items": {"type": "number", "minimum": low, "maximum": high},
+            "minItems": 3,
+            "maxItems": 3,
+            "description": "CIELAB (D50, 2 degree observer)",
+            "examples": [[55, -37, -50]],
+        }
 
 
 def text_problem(text: str) -> str:
@@ -291,7 +320,17 @@ def text_problem(text: str) -> str:
         category = unicodedata.category(character)
         if category in ("Cc", "Zl", "Zp"):
             return f"a control character (U+{ord(character):04X})"
-        if unicodedata.bidirectional(character) in ("LRE", "RLE", "LRO", "RLO", "PDF", "LRI", "RLI", "FSI", "PDI"):
+        if unicodedata.bidirectional(character) in (
+            "LRE",
+            "RLE",
+            "LRO",
+            "RLO",
+            "PDF",
+            "LRI",
+            "RLI",
+            "FSI",
+            "PDI",
+        ):
             return f"a character that turns the reading direction (U+{ord(character):04X})"
         if category in ("Cs", "Cn", "Co") or ord(character) == 0xFEFF:
             return f"a character without meaning (U+{ord(character):04X})"
