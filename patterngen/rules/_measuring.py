@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Literal
 
 from patterngen.model.evidence import Evidence
+from patterngen.model.screen import Screen
 from patterngen.model.verdict import Limit, Measurement, Status
 from patterngen.rules import _limits
 from patterngen.sources import source
@@ -30,6 +31,11 @@ def against(
         bad_when=bad_when,
         worst=worst or _limits.worst(limit),
     )
+
+
+def extremes(evidence: Evidence, screen: Screen) -> tuple[float, float]:
+    """(least, largest) plate tone of a screen, zeros where it draws nothing."""
+    return evidence.tone_extremes.get(screen.name) or (0.0, 0.0)
 
 
 def no_limit(evidence: Evidence, name: str) -> Measurement:

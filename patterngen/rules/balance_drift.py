@@ -9,6 +9,7 @@ import numpy as np
 
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import Balance, Measurement
+from patterngen.rules._beats import slower_than_sheet
 from patterngen.rules._examples import dots, preset
 from patterngen.rules._words import listed, rounded, width
 
@@ -52,7 +53,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
             warn_source=warn.source,
         )
     table = evidence.beats
-    slow = np.flatnonzero(np.isfinite(table.colour_swing))
+    slow = np.flatnonzero(np.isfinite(table.colour_swing) & ~slower_than_sheet(evidence))
     for row in slow:
         who = listed(list(table.participants(int(row))))
         period_mm = float(table.period_mm[row])

@@ -9,6 +9,7 @@ import numpy as np
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import BeatTable, Measurement
 from patterngen.rules._angles import apart_deg
+from patterngen.rules._beats import far_limits, slower_than_sheet
 from patterngen.rules._examples import dots, preset, usual_set
 from patterngen.rules._words import degrees, listed, rounded, width
 from patterngen.sources import source
@@ -37,8 +38,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     table = evidence.beats
     viewing = evidence.design.job.viewing
     said = source("calibration-on-practice")
-    limits = np.where(table.period_mm <= 1.0 + 1e-12, viewing.limit, viewing.limit_coarse)
-    slow = ~np.isfinite(table.period_mm) | (table.period_mm > evidence.design.job.sheet.diagonal_mm)
+    limits, slow = far_limits(evidence), slower_than_sheet(evidence)
     seen = [row for row in range(len(table)) if table.grade[row] == "visible" and not slow[row]]
     if len(table.slots) < 2:
         return

@@ -8,7 +8,7 @@ from patterngen.model.evidence import Evidence
 from patterngen.model.screen import Screen
 from patterngen.model.verdict import Measurement
 from patterngen.rules._examples import dots, preset
-from patterngen.rules._measuring import against, no_limit
+from patterngen.rules._measuring import against, extremes, no_limit
 from patterngen.rules._words import percent, width
 
 SUMMARY = "highlight dots too small to hold, or gaps in the shadows too small to stay open"
@@ -31,7 +31,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Smallest dot and smallest gap of every dot screen."""
     screens = [screen for screen in evidence.design.base.screens if len(screen.frequencies_per_mm) != 1]
     for screen in screens:
-        low, high = evidence.tone_extremes[screen.name]
+        low, high = extremes(evidence, screen)
         if 0 < low < 1:
             yield _judged(evidence, screen, low, "smallest_dot", screen.smallest_mm(low)[0])
         if 0 < high < 1:

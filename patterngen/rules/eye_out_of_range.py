@@ -9,6 +9,7 @@ import numpy as np
 from patterngen.model.evidence import Evidence
 from patterngen.model.seeing import cycles_per_degree
 from patterngen.model.verdict import Measurement
+from patterngen.rules._beats import far_limits, slower_than_sheet
 from patterngen.rules._examples import dots, preset
 from patterngen.rules._measuring import idle
 from patterngen.rules._words import listed, rounded, width
@@ -31,6 +32,7 @@ EXAMPLE_FAIL = preset(
     sheet={"size": ["70 mm", "50 mm"]},
     viewing={"distance": "350 mm", "far": "700 mm", "eye": "mannos-sakrison1974"},
 )
+_MATTERS = 0.1
 
 
 def measure(evidence: Evidence) -> Iterator[Measurement]:
@@ -43,10 +45,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         return
     table = evidence.beats
     frequency_per_mm = np.hypot(table.frequency_per_mm[:, 0], table.frequency_per_mm[:, 1])
-    limits = np.where(table.period_mm <= 1.0 + 1e-12, job.viewing.limit, job.viewing.limit_coarse)
-    matters = np.flatnonzero(
-        (table.visibility_far >= 0.1 * limits) & (frequency_per_mm * job.sheet.diagonal_mm > 1.0)
-    )
+    strong = table.visibility_far >= _MATTERS * far_limits(evidence)
+    matters = np.flatnonzero(strong & ~slower_than_sheet(evidence))
     if not len(matters):
         return
     cpd = cycles_per_degree(frequency_per_mm[matters], distance_mm=job.viewing.far_mm)

@@ -9,7 +9,7 @@ from patterngen.model.screen import Screen
 from patterngen.model.verdict import Measurement
 from patterngen.rules import _limits
 from patterngen.rules._examples import lines, preset
-from patterngen.rules._measuring import against, no_limit
+from patterngen.rules._measuring import against, extremes, no_limit
 from patterngen.rules._words import percent, width
 
 SUMMARY = "lines of a line screen too fine to hold, or gaps between them too fine to stay open"
@@ -31,7 +31,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     for screen in evidence.design.base.screens:
         if len(screen.frequencies_per_mm) != 1:
             continue
-        low, high = evidence.tone_extremes[screen.name]
+        low, high = extremes(evidence, screen)
         if 0 < low < 1:
             yield _line(evidence, screen, low)
         if 0 < high < 1:

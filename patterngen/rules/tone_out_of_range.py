@@ -8,7 +8,7 @@ from patterngen.model.evidence import Evidence
 from patterngen.model.screen import Screen
 from patterngen.model.verdict import Measurement
 from patterngen.rules._examples import dots, preset
-from patterngen.rules._measuring import against, no_limit
+from patterngen.rules._measuring import against, extremes, no_limit
 from patterngen.rules._words import percent
 
 SUMMARY = "tones lighter or darker than the process holds"
@@ -30,7 +30,7 @@ EXAMPLE_FAIL = preset(
 def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Both ends of every screen's tones."""
     for screen in evidence.design.base.screens:
-        low, high = evidence.tone_extremes[screen.name]
+        low, high = extremes(evidence, screen)
         if 0 < low < 1:
             yield _judged(evidence, screen, low, "tone_minimum")
         if 0 < high < 1:
