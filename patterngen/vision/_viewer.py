@@ -13,8 +13,8 @@ from patterngen.model.seeing import Viewer
 def luminance_cd_m2(*, light_lx: float, paper_y: float) -> float:
     """Luminance of paper, taken as a matt surface, of luminance factor `paper_y` (0 to 1).
 
-    >>> round(luminance_cd_m2(light_lx=500.0, paper_y=0.8762), 1)
-    139.5
+    >>> round(luminance_cd_m2(light_lx=500.0, paper_y=0.876183), 2)
+    139.45
     """
     return light_lx * paper_y / math.pi
 

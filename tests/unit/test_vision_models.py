@@ -10,9 +10,10 @@ import pytest
 
 from patterngen import registry
 from patterngen.colour.cielab import lab_to_xyz
+from patterngen.errors import InputError
+from patterngen.model.job import Viewing
 from patterngen.sources import keys
-from patterngen.vision import barten1999, mannos_sakrison1974
-from patterngen.vision._luminance import luminance_cd_m2
+from patterngen.vision import barten1999, luminance_cd_m2, mannos_sakrison1974, viewer
 
 with warnings.catch_warnings():
     warnings.simplefilter("ignore")  # it warns of optional libraries that it does not find
@@ -90,16 +91,28 @@ def test_barten_falls_in_proportion_to_frequency_towards_zero() -> None:
 
 def test_mannos_and_sakrison_have_the_height_of_bartens_peak() -> None:
     """second way: the peak of Barten's curve under the default light, searched on a fine grid."""
-    luminance = luminance_cd_m2(light_lx=500.0, paper_lab=(95.0, 0.0, -2.0))
+    luminance = luminance_cd_m2(light_lx=500.0, paper_y=float(lab_to_xyz((95.0, 0.0, -2.0))[1]))
     barten = barten1999.sensitivity(np.linspace(3.2, 3.5, 300_001), luminance_cd_m2=luminance).max()
     theirs = mannos_sakrison1974.sensitivity(np.linspace(7.8, 8.0, 200_001)).max()
     # a step of 1e-6 misses a peak by the order of its square
     assert theirs == pytest.approx(barten, rel=1e-9)
 
 
-@pytest.mark.parametrize("lightness", [0.0, 4.0, 8.0, 8.1, 50.0, 95.0, 100.0])
-def test_luminance_is_light_times_luminance_factor_over_pi(lightness: float) -> None:
-    """second way: Y from the CIELAB conversion of the colour room."""
-    y = lab_to_xyz((lightness, 3.0, -2.0))[1]
-    found = luminance_cd_m2(light_lx=500.0, paper_lab=(lightness, 3.0, -2.0))
-    assert found == pytest.approx(500.0 * y / np.pi, abs=1e-9)
+def test_luminance_of_matt_paper() -> None:
+    """second way: all light of 500 lx comes back into a half space whose projected solid angle is pi."""
+    y = ((95 + 16) / 116) ** 3
+    assert luminance_cd_m2(light_lx=500.0, paper_y=y) == pytest.approx(139.4489, abs=1e-4)
+    assert luminance_cd_m2(light_lx=np.pi, paper_y=1.0) == pytest.approx(1.0, rel=1e-15)
+
+
+def test_a_viewer_has_the_conditions_of_the_job() -> None:
+    looks = viewer(Viewing(distance_mm=300.0, far_mm=900.0, light_lx=200.0), paper_y=0.8)
+    assert (looks.distance_mm, looks.far_mm, looks.limit, looks.limit_coarse) == (300.0, 900.0, 4.0, 1.0)
+    cpd = np.array([2.0, 11.0])
+    expected = barten1999.sensitivity(cpd, luminance_cd_m2=160.0 / np.pi)
+    np.testing.assert_allclose(looks.sensitivity(cpd), expected, rtol=1e-12)
+
+
+def test_an_unknown_eye_is_refused_with_the_nearest() -> None:
+    with pytest.raises(InputError, match="barten1999"):
+        viewer(Viewing(eye="barten99"), paper_y=0.9)
