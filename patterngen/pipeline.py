@@ -14,10 +14,12 @@ from patterngen.errors import Fault, InputError
 from patterngen.model.design import Design, Layer, Sheet
 from patterngen.model.evidence import Evidence
 from patterngen.model.job import Job
+from patterngen.model.screen import Screen
 from patterngen.model.seeing import Viewer
 from patterngen.model.verdict import Finding, Verdict
 
 if TYPE_CHECKING:
+    from patterngen.beats.own import OwnTexture
     from patterngen.colour.inks import InkStack
 
 Stage = Callable[[str], None]
@@ -52,6 +54,7 @@ def build(job: Job, out: str | Path = "out", *, keep_failed: bool = False, progr
 def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     """Derive what was left open, compute every beat, judge."""
     from patterngen.beats.find import find_beats
+    from patterngen.beats.own import own_textures
     from patterngen.beats.together import tones_together
     from patterngen.colour.inks import InkStack
     from patterngen.rules import _engine, _limits
@@ -60,22 +63,25 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     _refuse_choose(job)
     tell("deriving what was left open")
     job = _engine.derive(job)
-    _refuse_impossible(job)
     design = make_design(job)
     screens = design.base.screens
     colours = InkStack.of(job)
+    viewer = viewer_of(job, colours)
     tell("finding beats")
     beats, balance = find_beats(
         screens=screens,
         grids=design.grids,
         colours=colours,
-        viewer=viewer_of(job),
+        viewer=viewer,
         sheet=job.sheet,
         press=job.press,
         overprints=job.overprints,
     )
     tell("judging")
     together = tones_together(screens, job.overprints, job.sheet, window_mm=0.0)
+    extremes = {screen.name: tone_extremes(screen) for screen in screens}
+    eye = registry.load("patterngen.vision", job.viewing.eye)
+    textures = own_textures(screens, together, colours=colours, viewer=viewer)
     printed = np.column_stack([screen.printed_tone(together[:, i]) for i, screen in enumerate(screens)])
     evidence = Evidence(
         design=design,
@@ -85,14 +91,17 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         tones_together=together,
         printed_together=printed,
         luminance=colours.luminance(),
-        tone_extremes={screen.name: tone_extremes(screen) for screen in screens},
+        tone_extremes={name: found for name, found in extremes.items() if found},
+        shapes_drawn={name: None if found else 0 for name, found in extremes.items()},
+        eye_valid_cpd=eye.VALID_CPD,
+        eye_takes_light=eye.TAKES_LIGHT,
     )
     findings = _engine.judge(evidence)
     verdict = Verdict(
         job=job.name,
         title=job.title,
         status=overall(findings),
-        screens=tuple(_screen_facts(design, colours)),
+        screens=tuple(screen_facts(screen, textures[screen.name], extremes[screen.name]) for screen in screens),
         beats=beats,
         balance=balance,
         findings=findings,
@@ -133,18 +142,12 @@ def make_design(job: Job) -> Design:
     return Design(job, Sheet(tuple(layer for layer in layers if layer.screens)), grids)
 
 
-def viewer_of(job: Job) -> Viewer:
-    """The job's observer: two distances, two limits, one eye in the job's light."""
-    from patterngen.vision._luminance import luminance_cd_m2
+def viewer_of(job: Job, colours: InkStack) -> Viewer:
+    """The job's observer: two distances, two limits, one eye, in the job's light on its paper."""
+    from patterngen.vision import viewer
 
-    eye = registry.load("patterngen.vision", job.viewing.eye)
-    luminance = luminance_cd_m2(light_lx=job.viewing.light_lx, paper_lab=job.paper_lab)
-
-    def sensitivity(cpd: Any) -> Any:
-        return eye.sensitivity(cpd, luminance_cd_m2=luminance)
-
-    viewing = job.viewing
-    return Viewer(viewing.distance_mm, viewing.far_mm, viewing.limit, viewing.limit_coarse, sensitivity)
+    paper_y = float(colours.primaries(())[1])
+    return viewer(job.viewing, paper_y=paper_y)
 
 
 def overall(findings: tuple[Finding, ...]) -> Literal["pass", "warn", "fail"]:
@@ -153,3 +156,60 @@ def overall(findings: tuple[Finding, ...]) -> Literal["pass", "warn", "fail"]:
     if "fail" in statuses:
         return "fail"
     return "warn" if statuses & {"warn", "waived"} else "pass"
+
+
+def tone_extremes(screen: Screen) -> tuple[float, float] | None:
+    """(smallest tone that draws anything, largest) on the plate; None where the screen draws nothing."""
+    if screen.area.area_mm2() <= 0.0:
+        return None
+    if screen.tone.constant is not None:
+        return (screen.tone.constant, screen.tone.constant) if screen.tone.constant > 0.0 else None
+    x0, y0, x1, y1 = screen.area.box_mm
+    steps = 512
+    x, y = np.meshgrid(
+        x0 + (np.arange(steps) + 0.5) / steps * (x1 - x0), y0 + (np.arange(steps) + 0.5) / steps * (y1 - y0)
+    )
+    x, y = x.ravel(), y.ravel()
+    tones = screen.tone.at(x, y, size_mm=1.0 / screen.ruling_per_mm)[screen.area.contains(x, y)]
+    tones = tones[tones > 1e-4]
+    return (float(tones.min()), float(tones.max())) if len(tones) else None
+
+
+def screen_facts(screen: Screen, texture: OwnTexture, extremes: tuple[float, float] | None) -> dict[str, Any]:
+    """What the verdict says of one screen, its own visibility (without any other screen) included."""
+    tone = screen.tone.constant
+    return {
+        "name": screen.name,
+        "ink": screen.ink,
+        "kind": screen.kind,
+        "shape": screen.shape,
+        "ruling_per_mm": screen.ruling_per_mm,
+        "angle_deg": screen.angle_deg,
+        "frequencies_per_mm": [[float(f) for f in row] for row in screen.frequencies_per_mm],
+        "tone": tone,
+        "tone_range": list(extremes or (0.0, 0.0)),
+        "printed_tone": None if tone is None else float(screen.printed_tone(tone)),
+        "contrast": texture.contrast,
+        "visibility": texture.visibility,
+        "visibility_far": texture.visibility_far,
+    }
+
+
+def _refuse_choose(job: Job) -> None:
+    """"choose" is a question to the search, not a value that can be built."""
+    faults = [
+        Fault(
+            job.name,
+            f"screen.{screen.name}.{key}",
+            '"choose" is for the search',
+            allowed=f"a value, or nothing (then the usual one is derived); `patterngen angles` proposes {key}s",
+        )
+        for screen in job.screens
+        for key in screen.params.get("choose", ())
+    ]
+    if faults:
+        raise InputError(faults)
+
+
+def _silent(stage: str) -> None:
+    """Progress that nobody listens to."""

@@ -83,6 +83,14 @@ def run() -> NoReturn:
         _say(f"patterngen: {error.filename or 'output'}: {error.strerror or error}")
         _mute_standard_output()
         code = 3
+    except Exception as error:
+        if os.environ.get("PATTERNGEN_TRACEBACK"):
+            raise
+        _say(
+            f"patterngen: this is a fault of the program, not of your input: {type(error).__name__}: {error}. "
+            "Nothing half-written is left. Set PATTERNGEN_TRACEBACK=1 to see where, and report it with the preset."
+        )
+        code = 3
     sys.exit(code if isinstance(code, int) else 0)
 
 
