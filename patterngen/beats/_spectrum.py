@@ -10,7 +10,12 @@ from patterngen.beats._enumerate import Candidates, IndexArray, OrderArray
 from patterngen.model.lattice import FloatArray
 from patterngen.model.screen import ComplexArray, Grid, Screen
 
-_TAIL_RADII = 2.0 ** np.arange(0.0, 6.5, 0.5)
+_FIRST_REACH = {1: 64, 2: 40}
+_LAST_REACH = {1: 1024, 2: 80}
+_TAIL_RADII = (1.0, 3.0)
+"""Where beyond the reach tails are asked for, in parts of the first order that is not worked out."""
+
+_NOTHING = 1e-15
 
 
 class Spectrum:
@@ -22,52 +27,58 @@ class Spectrum:
 
     def __init__(
         self, name: str, frequencies_per_mm: FloatArray, coefficients: Callable[[float, int], ComplexArray],
-        tail: Callable[[float, float], float], tones: FloatArray, *, reach: int,
+        tail: Callable[[float, float], float], tones: FloatArray,
     ) -> None:  # fmt: skip
         self.name = name
         self.frequencies_per_mm = np.asarray(frequencies_per_mm, dtype=float)
         self.axes = len(self.frequencies_per_mm)
         self._coefficients, self._tail = coefficients, tail
-        self.levels, self._level_of_row = np.unique(tones, return_inverse=True)
+        self._levels, self._level_of_row = np.unique(tones, return_inverse=True)
         stretch = np.linalg.svd(self.frequencies_per_mm, compute_uv=False)
         self.shortest_per_mm, self.longest_per_mm = float(stretch[-1]), float(stretch[0])
         self._bounds: dict[float, float] = {}
-        self.widen(reach)
+        self._work_out(_FIRST_REACH[self.axes])
 
     @classmethod
-    def of_screen(cls, screen: Screen, tones: FloatArray, *, reach: int) -> Spectrum:
+    def of_screen(cls, screen: Screen, tones: FloatArray) -> Spectrum:
         """The spectrum of a screen at the printed tones (rows,)."""
         return cls(
             screen.name, screen.frequencies_per_mm,
             lambda tone, reach: screen.coefficients(tone, reach=reach),
             lambda tone, radius: screen.tail(tone, radius=radius),
-            np.asarray(tones, dtype=float), reach=reach,
+            np.asarray(tones, dtype=float),
         )  # fmt: skip
 
     @classmethod
-    def of_grid(cls, grid: Grid, rows: int, *, reach: int) -> Spectrum:
+    def of_grid(cls, grid: Grid, rows: int) -> Spectrum:
         """The spectrum of a grid that does not sample, the same in all rows."""
         return cls(
             grid.name, grid.frequencies_per_mm,
             lambda _tone, reach: grid.coefficients(reach=reach),
             lambda _tone, radius: grid.tail(radius=radius),
-            np.full(rows, 0.5), reach=reach,
+            np.full(rows, 0.5),
         )  # fmt: skip
 
-    def widen(self, reach: int) -> None:
-        """Work out all orders up to `reach` on each axis."""
+    def widen(self) -> bool:
+        """Double the reach; False when it is at its cap already."""
+        if self.reach >= _LAST_REACH[self.axes]:
+            return False
+        self._work_out(min(2 * self.reach, _LAST_REACH[self.axes]))
+        return True
+
+    def _work_out(self, reach: int) -> None:
         self.reach = reach
         axis = np.arange(-reach, reach + 1, dtype=np.int32)
         grids = np.meshgrid(*[axis] * self.axes, indexing="ij")
         self.orders: OrderArray = np.stack(grids, axis=-1).reshape(-1, self.axes)
         self.nothing = len(self.orders) // 2
-        screened = (self.levels > 0) & (self.levels < 1)
-        self.table = np.zeros((len(self.levels), len(self.orders)), dtype=complex)
+        screened = (self._levels > 0) & (self._levels < 1)
+        self._table = np.zeros((len(self._levels), len(self.orders)), dtype=complex)
         for level in np.flatnonzero(screened):
-            self.table[level] = self._coefficients(float(self.levels[level]), reach).ravel()
-        self.table[:, self.nothing] = 1.0
-        self.modulus = np.abs(self.table)
-        self.envelope = self.modulus.max(axis=0)
+            self._table[level] = self._coefficients(float(self._levels[level]), reach).ravel()
+        self._table[:, self.nothing] = 1.0
+        self._modulus = np.abs(self._table)
+        self.envelope = self._modulus.max(axis=0)
 
     def positions(self, orders: OrderArray) -> IndexArray:
         """Flat positions of orders (n, axes) inside the reach."""
@@ -77,15 +88,18 @@ class Spectrum:
             at = at * side + (orders[:, axis] + self.reach)
         return at
 
-    def at_row(self, row: int) -> tuple[ComplexArray, FloatArray]:
-        """Coefficients and their moduli (orders,) in one row of tones."""
-        level = self._level_of_row[row]
-        return self.table[level], self.modulus[level]
+    def coefficients(self, row: int) -> ComplexArray:
+        """Coefficients by flat position in one row of tones."""
+        return np.asarray(self._table[self._level_of_row[row]])
+
+    def moduli(self, row: int) -> FloatArray:
+        """Their moduli."""
+        return np.asarray(self._modulus[self._level_of_row[row]])
 
     def tail(self, radius: float) -> float:
         """The largest tail bound over all tones that occur."""
         if radius not in self._bounds:
-            screened = self.levels[(self.levels > 0) & (self.levels < 1)]
+            screened = self._levels[(self._levels > 0) & (self._levels < 1)]
             self._bounds[radius] = max((self._tail(float(tone), radius) for tone in screened), default=0.0)
         return self._bounds[radius]
 
@@ -98,14 +112,14 @@ class Spectrum:
         first = self.reach + 1.0
         rows = [(self.shortest_per_mm * first, share * self.tail(first))]
         for factor in _TAIL_RADII[1:]:
-            length = self.longest_per_mm * first * float(factor)
-            rows.append((length, min(rows[-1][1], share * self.tail(first * float(factor)))))
+            length = self.longest_per_mm * first * factor
+            rows.append((length, min(rows[-1][1], share * self.tail(first * factor))))
         return np.array(rows)
 
-    def candidates(self, share: float, *, least: float = 0.0) -> tuple[Candidates, IndexArray]:
-        """Orders with `share` times the coefficient above `least`, and their flat positions."""
+    def candidates(self, share: float) -> Candidates:
+        """All orders of some weight: `share` times the largest coefficient in any row of tones."""
         weight = share * self.envelope
         weight[self.nothing] = 0.0
-        kept = np.flatnonzero(weight > max(least, 1e-15))
+        kept = np.flatnonzero(weight > _NOTHING)
         orders = self.orders[kept]
-        return Candidates(orders, orders @ self.frequencies_per_mm, weight[kept], self.unlisted(share)), kept
+        return Candidates(orders, orders @ self.frequencies_per_mm, weight[kept], self.unlisted(share))

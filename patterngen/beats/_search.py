@@ -1,0 +1,167 @@
+"""Which combinations there are, and how strong those can be that were not worked out."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from patterngen.beats._enumerate import Candidates, Tier, Travel, combinations
+from patterngen.beats._superposition import Hits, Shares, Superposition
+from patterngen.beats._tiers import COARSE_PER_MM, JOINING, LISTED_FAR, LISTED_NEAR, bands
+from patterngen.model.lattice import FloatArray
+from patterngen.model.screen import Grid
+from patterngen.model.seeing import Viewer
+
+_COLOUR_FLOOR = 2e-3
+"""Relative amplitude in any of X, Y, Z from which slow beats and balance are looked at."""
+
+_UP = 1e-9
+"""Frequencies (cycles/mm) this near to the axis count as on it when k and -k are told apart."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Search:
+    """The hits, and the largest visibility (near, far) that anything not listed can have."""
+
+    hits: Hits
+    bound_near: float
+    bound_far: float
+
+
+def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search:
+    """All combinations that might be listed, or that move colour slowly.
+
+    Reaches are widened until no combination with an order beyond them can be strong enough
+    to be listed, or to a cap; what is left then is in the bounds.
+    """
+    seen = over.shares((1,))
+    tiers = bands(viewer, start_per_mm=1.0 / diagonal_mm, strongest=_strongest(over, seen))
+    _widen(over, seen, tiers)
+    coloured = over.shares((0, 1, 2))
+    slow = [Tier(-1.0, COARSE_PER_MM, _COLOUR_FLOOR)]
+    found: list[Hits] = []
+    floors = [tier.floor for tier in tiers]
+    for comb in (None, *over.combs):
+        hits, kept = _found(over, seen, tiers, comb)
+        found.append(hits)
+        floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
+        found.append(_found(over, coloured, slow, comb)[0])
+    near, far = _bounds(over, viewer, seen, tiers, floors)
+    return Search(_upright(over, Hits.joined(found)), near, far)
+
+
+def _candidates(over: Superposition, shares: Shares) -> list[Candidates]:
+    return [s.candidates(float(share)) for s, share in zip(over.spectra, shares.each, strict=True)]
+
+
+def _strongest(over: Superposition, shares: Shares) -> float:
+    """No combination of two or more has a larger contrast."""
+    peaks = sorted((float(c.weight.max(initial=0.0)) for c in _candidates(over, shares)), reverse=True)
+    certain = 1 if over.combs else 2
+    first, others = peaks[:certain], peaks[certain:]
+    return shares.whole * float(np.prod(first)) * float(np.prod(np.maximum(others, 1.0)))
+
+
+def _beyond(travel: Travel, rest: FloatArray, candidates: Candidates, high_per_mm: float) -> float:
+    """The largest weight of a combination with an order beyond the reach that cancels down to `high_per_mm`."""
+    unlisted = candidates.unlisted
+    return float((unlisted[:, 1] * travel.at(rest, unlisted[:, 0] - high_per_mm)).max())
+
+
+def _beyond_each(over: Superposition, shares: Shares, tier: Tier, lists: Sequence[Candidates], travel: Travel) -> FloatArray:
+    """(spectra,) the largest contrast of a combination in the tier with an order beyond the spectrum's reach."""
+    # a comb cancels any length, so with one only the decay of the coefficients bounds
+    high = np.inf if over.combs else tier.high_per_mm
+    return np.array(
+        [
+            shares.whole * _beyond(travel, rest, candidates, high)
+            for candidates, rest in zip(lists, travel.all_but(), strict=True)
+        ]
+    )
+
+
+def _widen(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> None:
+    """Grow every reach until what lies beyond it cannot be listed, or to the cap."""
+    if not tiers:
+        return
+    while True:
+        lists = _candidates(over, shares)
+        travel = Travel(lists)
+        strong = np.zeros(len(lists), dtype=bool)
+        for tier in tiers:
+            strong |= _beyond_each(over, shares, tier, lists, travel) >= tier.floor / JOINING
+        if not any([over.spectra[p].widen() for p in np.flatnonzero(strong)]):
+            return
+
+
+def _bounds(
+    over: Superposition, viewer: Viewer, shares: Shares, tiers: Sequence[Tier], floors: Sequence[float]
+) -> tuple[float, float]:
+    near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
+    lists = _candidates(over, shares)
+    travel = Travel(lists)
+    for tier, floor in zip(tiers, floors, strict=True):
+        left = float(_beyond_each(over, shares, tier, lists, travel).max(initial=0.0))
+        if floor > tier.floor * (1.0 + 1e-9):
+            left = max(left, floor)
+        inside = np.geomspace(max(tier.low_per_mm, 1e-9), tier.high_per_mm, 24)
+        near = max(near, left * float(viewer.sensitivity_near(inside).max()))
+        far = max(far, left * float(viewer.sensitivity_far(inside).max()))
+    return near, far
+
+
+def _found(
+    over: Superposition, shares: Shares, tiers: Sequence[Tier], comb: Grid | None
+) -> tuple[Hits, tuple[float, ...]]:
+    """Combinations of the tiers (without any comb, or with this one), and the floors that were kept to."""
+    lists = _candidates(over, shares)
+    scaled = [replace(tier, floor=tier.floor / shares.whole) for tier in tiers]
+    if comb is None and tiers:
+        travel = Travel(lists)
+        lists = [_useful(c, travel, rest, scaled) for c, rest in zip(lists, travel.all_but(), strict=True)]
+    found = combinations(lists, scaled, comb=None if comb is None else _plane(comb.frequencies_per_mm))
+    orders = np.zeros((len(found.choice), over.width), dtype=np.int32)
+    weight = found.weight.copy()
+    for p, candidates in enumerate(lists):
+        part = np.flatnonzero(found.choice[:, p] >= 0)
+        orders[part, over.columns[over.spectra[p].name]] = candidates.orders[found.choice[part, p]]
+        weight[part] /= shares.each[p]
+    if comb is not None and found.comb_order is not None:
+        orders[:, over.columns[comb.name]] = found.comb_order[:, : len(comb.frequencies_per_mm)]
+    hits = over.hits(orders, found.frequency_per_mm)
+    # shares may bound a set of screens from above: its true factor decides
+    floors = tuple(floor * shares.whole for floor in found.floors)
+    strong = weight * shares.contrasts[hits.sets] >= min(floors, default=0.0) * (1.0 - 1e-9)
+    return hits.take(strong), floors
+
+
+def _useful(candidates: Candidates, travel: Travel, rest: FloatArray, tiers: Sequence[Tier]) -> Candidates:
+    """Those orders that the other participants can still cancel with enough weight left."""
+    length = np.hypot(candidates.frequency_per_mm[:, 0], candidates.frequency_per_mm[:, 1])
+    kept = candidates.weight * travel.at(travel.need(rest, tiers), length) >= 1.0
+    return Candidates(
+        candidates.orders[kept], candidates.frequency_per_mm[kept], candidates.weight[kept], np.zeros((0, 2))
+    )
+
+
+def _plane(frequencies_per_mm: FloatArray) -> FloatArray:
+    """Two frequency vectors of a comb; a comb of lines gets a second one far beyond any beat."""
+    if len(frequencies_per_mm) == 2:
+        return np.asarray(frequencies_per_mm, dtype=float)
+    x, y = frequencies_per_mm[0]
+    return np.array([[x, y], [-1e6 * y, 1e6 * x]])
+
+
+def _upright(over: Superposition, hits: Hits) -> Hits:
+    """Each once (k and -k are one), turned so that its frequency points up, or right."""
+    fx, fy = hits.frequency_per_mm[:, 0], hits.frequency_per_mm[:, 1]
+    down = (fy < -_UP) | ((np.abs(fy) <= _UP) & (fx < -_UP))
+    still = np.hypot(fx, fy) <= _UP
+    if len(hits):
+        lead = hits.orders[np.arange(len(hits)), np.argmax(hits.orders != 0, axis=1)]
+        down = np.where(still, lead < 0, down)
+    sign = np.where(down, -1, 1).astype(np.int32)
+    orders, rows = np.unique(hits.orders * sign[:, None], axis=0, return_index=True)
+    return over.hits(orders, hits.frequency_per_mm[rows] * sign[rows, None])
