@@ -8,7 +8,7 @@ import numpy as np
 
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import BeatTable, Measurement
-from patterngen.rules._angles import apart_deg
+from patterngen.rules._angles import screens_apart_deg
 from patterngen.rules._beats import far_limits, slower_than_sheet
 from patterngen.rules._examples import dots, preset, usual_set
 from patterngen.rules._words import degrees, listed, rounded, width
@@ -130,10 +130,15 @@ def _advice(evidence: Evidence, row: int) -> str:
         )
     if len(inked) == 2:
         a, b = inked
-        off = apart_deg(a.angle_deg, b.angle_deg, repeat_deg=min(a.symmetry_deg, b.symmetry_deg))
+        off = screens_apart_deg(a, b)
+        if off < 29.5:
+            return (
+                f"They stand {degrees(off)} apart: bring them to 30 degrees (two inks alone: 45), "
+                "or give them clearly different rulings."
+            )
         return (
-            f"They stand {degrees(off)} apart: bring them to 30 degrees (two inks alone: 45), "
-            "or give them clearly different rulings."
+            f"They stand {degrees(off)} apart and meet in a higher order: turn one of them by a few degrees "
+            "(at one ruling 30 and 45 degrees are clear of it), or change one ruling."
         )
     return (
         "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 "

@@ -1,4 +1,4 @@
-"""invariant: every judging rule passes its good example and catches its bad one, through the whole program."""
+"""invariant: every judging rule passes its good example and catches its bad one, in the whole program."""
 
 from __future__ import annotations
 

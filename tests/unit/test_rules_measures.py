@@ -439,13 +439,13 @@ def test_without_a_process_rules_that_need_one_say_so(rule: str) -> None:
         assert "[press]" in finding.message
 
 
-def test_an_empty_area_fails_and_an_uncounted_one_says_so() -> None:
+def test_an_empty_area_fails_and_an_uncounted_one_counts_its_cells() -> None:
     screen = MadeScreen("Black", 45.0)
-    statuses = [
-        only("area-without-shapes", evidence(screen, shapes_drawn={"black": drawn})).status
-        for drawn in (0, 1, None)
-    ]
-    assert statuses == ["fail", "pass", "not-applicable"]
+    drawn = [only("area-without-shapes", evidence(screen, shapes_drawn={"black": n})) for n in (0, 1, None)]
+    assert [finding.status for finding in drawn] == ["fail", "pass", "pass"]
+    assert drawn[2].measured == pytest.approx(30 * 20 * LPI_150**2)
+    screen.area = Area((0, 0, 0.1, 0.1))
+    assert only("area-without-shapes", evidence(screen, shapes_drawn={"black": None})).status == "warn"
 
 
 def test_remarks_become_warnings() -> None:
