@@ -14,6 +14,7 @@ IntegerArray = NDArray[np.int64]
 
 _TORUS = {1: 256, 2: 48, 3: 20}
 _REFINE = 9
+_BATCH = 48
 
 
 def integer_basis(vectors: NDArray[np.integer]) -> IntegerArray:
@@ -99,41 +100,56 @@ def modulus_extremes(amplitudes: Sequence[ComplexArray], orders: Sequence[NDArra
     if not many:
         return out
     differences = [orders[i].astype(np.int64) - orders[i][0] for i in many]
-    basis = integer_basis(np.concatenate(differences))
-    for i, difference in zip(many, differences, strict=True):
-        turns, _ = coordinates(basis, difference)
-        used = np.flatnonzero(turns.any(axis=0))
-        if np.linalg.matrix_rank(turns) == len(turns) - 1:
+    stacked = np.concatenate(differences)
+    turns, _ = coordinates(integer_basis(stacked), stacked)
+    dependent: dict[int, list[tuple[int, IntegerArray]]] = {}
+    for i, own, difference in zip(many, np.split(turns, np.cumsum([len(d) for d in differences])), differences, strict=False):
+        used = np.flatnonzero(own.any(axis=0))
+        if len(own) - 1 <= len(used) and np.linalg.matrix_rank(own) == len(own) - 1:
             continue
-        if len(used) > 3:
-            own = integer_basis(difference)
-            turns, _ = coordinates(own, difference)
-            used = np.arange(len(own))
-            if len(used) > 3:
-                continue
-        out[i] = _search(amplitudes[i], turns[:, used])
+        if len(used) > max(_TORUS):
+            own, _ = coordinates(integer_basis(difference), difference)
+            used = np.arange(own.shape[1])
+        if len(used) <= max(_TORUS):
+            dependent.setdefault(len(used), []).append((i, own[:, used]))
+    for found in dependent.values():
+        # like sizes together, so that little is padded
+        found.sort(key=lambda item: len(item[1]))
+        for at in range(0, len(found), _BATCH):
+            batch = found[at : at + _BATCH]
+            rows = [i for i, _ in batch]
+            out[rows] = _search([amplitudes[i] for i in rows], [n for _, n in batch])
     return out
 
 
-def _search(amplitude: ComplexArray, turns: IntegerArray) -> tuple[float, float]:
-    """Least and largest |sum a_j exp(2 pi i n_j . theta)| on a grid over the torus, then refined."""
-    rank = turns.shape[1]
-    size = _TORUS[rank]
-    grid = np.zeros((size,) * rank, dtype=complex)
-    np.add.at(grid, tuple((turns % size).T), amplitude)
-    modulus = np.abs(np.fft.ifftn(grid, norm="forward"))
-    ends = []
-    for sign in (-1.0, 1.0):
-        at = np.array(np.unravel_index(int(np.argmax(sign * modulus)), modulus.shape)) / size
-        best = float(modulus.ravel()[int(np.argmax(sign * modulus))])
+def _search(amplitudes: Sequence[ComplexArray], turns: Sequence[IntegerArray]) -> FloatArray:
+    """(groups, 2): least and largest |sum a_j exp(2 pi i n_j . theta)| on a grid over the torus, then refined."""
+    groups, rank = len(turns), turns[0].shape[1]
+    size, longest = _TORUS[rank], max(map(len, turns))
+    amplitude = np.zeros((groups, longest), dtype=complex)
+    turn = np.zeros((groups, longest, rank), dtype=np.int64)
+    for g in range(groups):
+        amplitude[g, : len(turns[g])] = amplitudes[g]
+        turn[g, : len(turns[g])] = turns[g]
+    grid = np.zeros((groups,) + (size,) * rank, dtype=complex)
+    place = np.broadcast_to(np.arange(groups)[:, None], (groups, longest))
+    np.add.at(grid, (place, *np.moveaxis(turn % size, -1, 0)), amplitude)
+    modulus = np.abs(np.fft.ifftn(grid, axes=tuple(range(1, rank + 1)), norm="forward")).reshape(groups, -1)
+    around = np.stack(np.meshgrid(*[[-1.0, 0.0, 1.0]] * rank, indexing="ij"), axis=-1).reshape(-1, rank)
+    out = np.empty((groups, 2))
+    every = np.arange(groups)
+    for end, sign in enumerate((-1.0, 1.0)):
+        first = np.argmax(sign * modulus, axis=1)
+        at = np.stack(np.unravel_index(first, (size,) * rank), axis=1) / size
+        best = modulus[every, first]
         step = 0.5 / size
-        around = np.stack(np.meshgrid(*[[-1.0, 0.0, 1.0]] * rank, indexing="ij"), axis=-1).reshape(-1, rank)
         for _ in range(_REFINE):
-            trial = at + step * around
-            value = np.abs(np.exp(2j * np.pi * (trial @ turns.T)) @ amplitude)
-            k = int(np.argmax(sign * value))
-            if sign * float(value[k]) > sign * best:
-                at, best = trial[k], float(value[k])
+            trial = at[:, None, :] + step * around
+            phase = np.exp(2j * np.pi * np.einsum("gtr,gjr->gtj", trial, turn))
+            value = np.abs(np.einsum("gtj,gj->gt", phase, amplitude))
+            k = np.argmax(sign * value, axis=1)
+            better = sign * value[every, k] > sign * best
+            at[better], best[better] = trial[every, k][better], value[every, k][better]
             step *= 0.5
-        ends.append(best)
-    return ends[0], ends[1]
+        out[:, end] = best
+    return out

@@ -70,28 +70,26 @@ def _beyond(travel: Travel, rest: FloatArray, candidates: Candidates, high_per_m
     return float((unlisted[:, 1] * travel.at(rest, unlisted[:, 0] - high_per_mm)).max())
 
 
-def _beyond_each(over: Superposition, shares: Shares, tier: Tier, lists: Sequence[Candidates], travel: Travel) -> FloatArray:
-    """(spectra,) the largest contrast of a combination in the tier with an order beyond the spectrum's reach."""
+def _beyond_each(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> FloatArray:
+    """(tiers, spectra) the largest contrast of a combination with an order beyond that spectrum's reach."""
+    lists = _candidates(over, shares)
+    travel = Travel(lists)
+    rests = travel.all_but()
     # a comb cancels any length, so with one only the decay of the coefficients bounds
-    high = np.inf if over.combs else tier.high_per_mm
+    highs = [np.inf if over.combs else tier.high_per_mm for tier in tiers]
     return np.array(
         [
-            shares.whole * _beyond(travel, rest, candidates, high)
-            for candidates, rest in zip(lists, travel.all_but(), strict=True)
+            [shares.whole * _beyond(travel, rest, c, high) for c, rest in zip(lists, rests, strict=True)]
+            for high in highs
         ]
-    )
+    ).reshape(len(tiers), len(lists))
 
 
 def _widen(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> None:
     """Grow every reach until what lies beyond it cannot be listed, or to the cap."""
-    if not tiers:
-        return
+    floors = np.array([tier.floor / JOINING for tier in tiers])
     while True:
-        lists = _candidates(over, shares)
-        travel = Travel(lists)
-        strong = np.zeros(len(lists), dtype=bool)
-        for tier in tiers:
-            strong |= _beyond_each(over, shares, tier, lists, travel) >= tier.floor / JOINING
+        strong = (_beyond_each(over, shares, tiers) >= floors[:, None]).any(axis=0)
         if not any([over.spectra[p].widen() for p in np.flatnonzero(strong)]):
             return
 
@@ -100,10 +98,8 @@ def _bounds(
     over: Superposition, viewer: Viewer, shares: Shares, tiers: Sequence[Tier], floors: Sequence[float]
 ) -> tuple[float, float]:
     near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
-    lists = _candidates(over, shares)
-    travel = Travel(lists)
-    for tier, floor in zip(tiers, floors, strict=True):
-        left = float(_beyond_each(over, shares, tier, lists, travel).max(initial=0.0))
+    beyond = _beyond_each(over, shares, tiers).max(axis=1, initial=0.0)
+    for tier, floor, left in zip(tiers, floors, beyond.tolist(), strict=True):
         if floor > tier.floor * (1.0 + 1e-9):
             left = max(left, floor)
         inside = np.geomspace(max(tier.low_per_mm, 1e-9), tier.high_per_mm, 24)
