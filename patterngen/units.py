@@ -141,7 +141,7 @@ def _mendable(text: str, quantity: Quantity, allowed: str) -> QuantityError:
 
 def _factor(unit: str, quantity: Quantity) -> float | None:
     # "um" is often typed with one of the two Greek letters
-    word = " ".join(unit.translate(_LOOKALIKES).split())
+    word = re.sub(r"[ \t]+", " ", unit.translate(_LOOKALIKES))
     for spelling in (word, word.lower(), word.replace("/ ", "/")):
         if spelling in quantity.units:
             return quantity.units[spelling]

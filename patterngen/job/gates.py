@@ -23,7 +23,9 @@ _BYTE_ORDER_MARKS = (
 )
 _TOKEN = re.compile(
     r"""(?P<skip>\#[^\n]*|\"\"\"(?:[^\\]|\\.)*?\"\"\"|'''.*?''')
+      | (?P<unclosed>\"\"\"|''')
       | (?P<word>\"(?:[^"\\\n]|\\.)*\"|'[^'\n]*'|[A-Za-z0-9_-]+)
+      | (?P<broken>["'])
       | (?P<dot>\.) | (?P<open>[\[{]) | (?P<close>[\]}]) | (?P<end>[\n,=])
       | [ \t\r]+ | .""",
     re.VERBOSE | re.DOTALL,
@@ -164,9 +166,12 @@ def bad_values(data: object, *, where: str, key: str = "", depth: int = 0) -> It
 
 
 def _refuse_depth(text: str, where: str) -> None:
-    open_brackets, parts, line = 0, 0, 1
+    open_brackets = parts = 0
     for token in _TOKEN.finditer(text):
         kind = token.lastgroup
+        if kind in ("unclosed", "broken"):
+            # a text without an end: the parser will say so, and nothing after it counts
+            return
         if kind == "dot":
             parts += 1
         elif kind == "open":

@@ -23,13 +23,13 @@ from patterngen.model.fields import (
     PositiveLength,
     QuantityField,
     Resolution,
-    Ruling,
     RulingOrChoose,
     Share,
     TextField,
     refusal,
 )
 from patterngen.rules import _limits
+from patterngen.units import LENGTH, RESOLUTION, RULING, Quantity
 
 VERSION = 1
 MOST_INKS = 16
@@ -63,8 +63,6 @@ class Pair:
 
 
 def _length_pair(*, positive: bool) -> Pair:
-    from patterngen.units import LENGTH
-
     return Pair(QuantityField(LENGTH, low=0.0 if positive else -10_000.0, high=10_000.0, above=positive))
 
 
@@ -72,6 +70,13 @@ Size = Annotated[tuple[float, float], _length_pair(positive=True)]
 Point = Annotated[tuple[float, float], _length_pair(positive=False)]
 Truth = Annotated[bool, Field(strict=True)]
 ArtPath = Annotated[str, TextField("a path relative to the preset's folder", 200)]
+# an imager's or scanner's pixels are counted in dpi, a mesh in threads to the cm
+GridRuling = Annotated[
+    float,
+    QuantityField(
+        Quantity("a ruling", RULING.units | RESOLUTION.units, "120 /cm"), low=0.0, high=10_000.0, above=True
+    ),
+]
 InkName = Annotated[str, TextField("the name of an ink", 60)]
 
 
@@ -196,7 +201,7 @@ class GridTable(Table):
 
     name: Annotated[str, NameField("the grid's own name")]
     kind: Annotated[str, ChoiceField("a kind of grid", lambda: registry.names("patterngen.grids"))]
-    ruling: Ruling
+    ruling: GridRuling
     angle: Angle = 0.0
 
 
