@@ -88,22 +88,6 @@ def test_rulings_of_offset_on_metal(ruling: str, status: str) -> None:
     assert finding(data, "ruling-out-of-range").status == status
 
 
-@pytest.mark.parametrize(
-    "rulings",
-    [
-        {"Cyan": "60 /cm", "Magenta": "60 /cm", "Yellow": "60 /cm", "Black": "84 /cm"},
-        {"Cyan": "60 /cm", "Magenta": "60 /cm", "Yellow": "84 /cm", "Black": "60 /cm"},
-    ],
-    ids=["black", "yellow"],
-)
-def test_a_finer_black_or_yellow_shows_no_beat(rulings: dict[str, str | None]) -> None:
-    """iso-12647-9-2021, 4.2.3: black or yellow at, for example, 84 /cm against 60 /cm."""
-    verdict = patterngen.verify(
-        patterngen.load(preset(press={"process": "metal-decoration"}, rulings=rulings))
-    )
-    assert {f.status for f in verdict.findings if f.rule == "beats-visible"} <= {"pass", "not-applicable"}
-
-
 LIMITS = [
     ("metal-decoration", "ruling_lowest", "48 /cm", RULING, "iso-12647-9-2021"),
     ("metal-decoration", "ruling_highest", "80 /cm", RULING, "iso-12647-9-2021"),
