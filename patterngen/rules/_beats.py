@@ -2,11 +2,17 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
+
 import numpy as np
 
 from patterngen.model.area import BoolArray
 from patterngen.model.evidence import Evidence
 from patterngen.model.lattice import FloatArray
+from patterngen.model.verdict import BeatTable
+
+_SAME = 0.02
 
 
 def far_limits(evidence: Evidence) -> FloatArray:
@@ -18,3 +24,24 @@ def far_limits(evidence: Evidence) -> FloatArray:
 def slower_than_sheet(evidence: Evidence) -> BoolArray:
     """Which beats (n,) are longer than the sheet's diagonal, and so are balance."""
     return np.asarray(evidence.beats.period_mm > evidence.design.job.sheet.diagonal_mm)
+
+
+def patterns(table: BeatTable, rows: Sequence[int], strength: FloatArray) -> list[list[int]]:
+    """Rows that a person sees as one pattern (often the same bands crosswise), the strongest first.
+
+    One pattern has the same participants, period and `strength` (n,), the last two within 2 %.
+    """
+    out: list[list[int]] = []
+    for row in sorted(rows, key=lambda r: -strength[r]):
+        for pattern in out:
+            first = pattern[0]
+            if (
+                set(table.participants(first)) == set(table.participants(row))
+                and math.isclose(table.period_mm[row], table.period_mm[first], rel_tol=_SAME)
+                and math.isclose(strength[row], strength[first], rel_tol=_SAME)
+            ):
+                pattern.append(row)
+                break
+        else:
+            out.append([row])
+    return out

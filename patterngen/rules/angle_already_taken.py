@@ -41,15 +41,15 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
             continue
         nearest = min(others, key=lambda other: screens_apart_deg(tint, other))
         off = screens_apart_deg(tint, nearest)
-        taken = off < limit.value
+        stands = f"stands {degrees(off)} from" if off >= 0.05 else "stands at the angle of"
+        text = f"The tint {name} {stands} {nearest.name}, which it overprints"
+        if off < limit.value:
+            text += f": that angle is taken. {_free(evidence, others)}"
         yield against(
             limit,
             off,
             where=name,
-            message=(
-                f"The tint {name} stands {degrees(off)} from {nearest.name}, which it overprints"
-                + (f": that angle is taken. {_free(evidence, others)}" if taken else ".")
-            ),
+            message=text if text.endswith(".") else f"{text}.",
             bad_when="below",
             worst="warn",
         )

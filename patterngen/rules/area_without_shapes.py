@@ -14,8 +14,8 @@ from patterngen.sources import source
 SUMMARY = "a screen draws nothing: its area holds no shape"
 REASON = """An area that is empty, outside the sheet, smaller than one cell or blank in its picture gives
 a plate without anything on it. That is a mistake in the artwork, and it is found here and not on press."""
-MEASURES = """How many shapes each screen draws; where they were not counted, how many cells of its ruling its
-area holds."""
+MEASURES = """How many shapes each screen draws; where they were not counted, how many cells of its
+ruling its area holds."""
 SOURCES = ("own-rule",)
 LIMITS: tuple[str, ...] = ()
 IDLE = "There are no screens."

@@ -9,7 +9,7 @@ import numpy as np
 
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import Balance, Measurement
-from patterngen.rules._beats import slower_than_sheet
+from patterngen.rules._beats import patterns, slower_than_sheet
 from patterngen.rules._examples import dots, preset
 from patterngen.rules._words import listed, rounded, width
 
@@ -40,51 +40,48 @@ EXAMPLE_FAIL = preset(dots("Magenta", angle="45 deg"), dots("Black", angle="45 d
 
 def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Colour swing of every balance and of every slow beat."""
-    warn, fail = evidence.limits["drift_warn"], evidence.limits["drift_fail"]
     for balance in evidence.balance:
-        yield Measurement(
-            balance.colour_swing,
-            fail.value,
-            fail.unit,
-            listed(balance.names),
-            _balance_sentence(evidence, balance),
-            fail.source,
-            warn_at=warn.value,
-            warn_source=warn.source,
-        )
+        sentence = _balance_sentence(evidence, balance)
+        yield _against_both(evidence, balance.colour_swing, listed(balance.names), sentence)
     table = evidence.beats
-    slow = np.flatnonzero(np.isfinite(table.colour_swing) & ~slower_than_sheet(evidence))
-    for row in slow:
-        who = listed(list(table.participants(int(row))))
-        period_mm = float(table.period_mm[row])
-        yield Measurement(
-            float(table.colour_swing[row]),
-            fail.value,
-            fail.unit,
+    slow = [
+        int(row) for row in np.flatnonzero(np.isfinite(table.colour_swing) & ~slower_than_sheet(evidence))
+    ]
+    for rows in patterns(table, slow, table.colour_swing):
+        who = listed(list(table.participants(rows[0])))
+        swing = float(table.colour_swing[rows[0]])
+        yield _against_both(
+            evidence,
+            swing,
             who,
-            f"{who} shade the print in waves {width(period_mm)} long; "
-            f"from crest to trough the colour moves by {rounded(float(table.colour_swing[row]))} CIEDE2000.",
-            fail.source,
-            warn_at=warn.value,
-            warn_source=warn.source,
+            f"{who} shade the print in waves {width(float(table.period_mm[rows[0]]))} long; "
+            f"from crest to trough the colour moves by {rounded(swing)} CIEDE2000.",
         )
-    if len(table.slots) > 1 and not evidence.balance and not len(slow):
-        yield Measurement(
-            0.0,
-            fail.value,
-            fail.unit,
-            "",
-            "No screens are in balance and no beat is longer than 2 mm: colour does not move with register.",
-            fail.source,
-            warn_at=warn.value,
-            warn_source=warn.source,
+    if len(table.slots) > 1 and not evidence.balance and not slow:
+        text = (
+            "No screens are in balance and no beat is longer than 2 mm: colour does not move with register."
         )
+        yield _against_both(evidence, 0.0, "all screens", text)
+
+
+def _against_both(evidence: Evidence, swing: float, where: str, message: str) -> Measurement:
+    warn, fail = evidence.limits["drift_warn"], evidence.limits["drift_fail"]
+    return Measurement(
+        swing,
+        fail.value,
+        fail.unit,
+        where,
+        message,
+        fail.source,
+        warn_at=warn.value,
+        warn_source=warn.source,
+    )
 
 
 def _balance_sentence(evidence: Evidence, balance: Balance) -> str:
     who = listed(balance.names)
     press = evidence.design.job.press
-    state = "are in exact balance" if balance.exact else _nearly(balance)
+    state = _state(balance)
     dark, _, light = balance.mean_y
     such = (
         "dot beside dot against dot on dot"
@@ -112,6 +109,11 @@ def _balance_sentence(evidence: Evidence, balance: Balance) -> str:
     return " ".join(parts)
 
 
-def _nearly(balance: Balance) -> str:
-    length_mm = 1.0 / math.hypot(*balance.frequency_per_mm)
-    return f"beat more slowly than the sheet is long (waves of {width(length_mm)})"
+def _state(balance: Balance) -> str:
+    if not balance.exact:
+        length_mm = 1.0 / math.hypot(*balance.frequency_per_mm)
+        return f"beat more slowly than the sheet is long (waves of {width(length_mm)})"
+    first_orders = all(sum(abs(k) for k in orders) == 1 for orders in balance.orders.values())
+    if len(balance.orders) == 2 and first_orders:
+        return "share one angle and ruling"
+    return "are in exact balance"

@@ -9,7 +9,7 @@ import numpy as np
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import BeatTable, Measurement
 from patterngen.rules._angles import screens_apart_deg
-from patterngen.rules._beats import far_limits, slower_than_sheet
+from patterngen.rules._beats import far_limits, patterns, slower_than_sheet
 from patterngen.rules._examples import dots, preset, usual_set
 from patterngen.rules._words import degrees, listed, rounded, width
 from patterngen.sources import source
@@ -30,8 +30,6 @@ IDLE = "Fewer than two screens or grids: nothing can beat."
 EXAMPLE_PASS = preset(*usual_set())
 EXAMPLE_FAIL = preset(dots("Cyan", angle="15 deg"), dots("Black", angle="20 deg", tone="30 %"))
 
-_SAME = 0.02
-
 
 def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Each visible pattern, or else the strongest beat, in times the threshold at the far distance."""
@@ -42,7 +40,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     seen = [row for row in range(len(table)) if table.grade[row] == "visible" and not slow[row]]
     if len(table.slots) < 2:
         return
-    for rows in _patterns(table, seen, limits):
+    for rows in patterns(table, seen, table.visibility_far / limits):
         row = rows[0]
         yield Measurement(
             float(table.visibility_far[row]),
@@ -82,25 +80,6 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     )
 
 
-def _patterns(table: BeatTable, rows: list[int], limits: np.ndarray) -> list[list[int]]:
-    """Rows that a person sees as one pattern: same participants, period and strength; worst first."""
-    out: list[list[int]] = []
-    for row in sorted(rows, key=lambda r: -table.visibility_far[r] / limits[r]):
-        for pattern in out:
-            first = pattern[0]
-            alike = (
-                set(table.participants(first)) == set(table.participants(row))
-                and abs(table.period_mm[row] / table.period_mm[first] - 1) < _SAME
-                and abs(table.visibility_far[row] / table.visibility_far[first] - 1) < _SAME
-            )
-            if alike:
-                pattern.append(row)
-                break
-        else:
-            out.append([row])
-    return out
-
-
 def _sentence(table: BeatTable, rows: list[int], limit: float) -> str:
     row = rows[0]
     who = listed(list(table.participants(row)))
@@ -137,8 +116,8 @@ def _advice(evidence: Evidence, row: int) -> str:
                 "or give them clearly different rulings."
             )
         return (
-            f"They stand {degrees(off)} apart and meet in a higher order: turn one of them by a few degrees "
-            "(at one ruling 30 and 45 degrees are clear of it), or change one ruling."
+            f"They stand {degrees(off)} apart and meet in a higher order, which grows with dark tones: "
+            "turn one of them by a few degrees or change one ruling."
         )
     return (
         "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 "
