@@ -70,8 +70,9 @@ def _table(
         power=beats.power[order],
         mean=beats.mean[order],
         contrast=contrast[order],
-        contrast_min=beats.contrast_min[order],
-        contrast_max=beats.contrast_max[order],
+        # a root of squares and a sum of moduli of one component may differ in their last digit
+        contrast_min=np.minimum(beats.contrast_min, contrast)[order],
+        contrast_max=np.maximum(beats.contrast_max, contrast)[order],
         threshold=threshold[order],
         visibility=visibility[order],
         visibility_far=visibility_far[order],
