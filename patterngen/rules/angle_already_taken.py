@@ -17,7 +17,8 @@ REASON = """A spot ink that is added to a job late is easily left at 45 degrees,
 sits. A flat tint shows what a picture hides: on one angle with an ink that it overprints, its colour
 moves with every slip of register, and a few degrees off it makes wide bands."""
 MEASURES = """For each flat tint, the least angle to any other ink of like ruling that is screened in the
-same place; the message names the angles that would be free."""
+same place (of two tints the later in the tables counts as the one added); the message names the angles
+that would be free."""
 SOURCES = ("trade-spot-tint", "trade-same-angle", "trade-extra-inks")
 LIMITS = ("angle_taken", "angle_apart")
 IDLE = "No flat tint meets another screened ink of like ruling."
@@ -31,14 +32,13 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     neighbours: dict[str, list[Screen]] = {}
     screens = {screen.name: screen for screen in evidence.design.base.screens}
     for a, b in meeting(evidence):
-        if like_rulings(a.ruling_per_mm, b.ruling_per_mm):
-            neighbours.setdefault(a.name, []).append(b)
-            neighbours.setdefault(b.name, []).append(a)
+        # of two tints the one that stands later in the tables was added to the other
+        tint, other = (b, a) if b.tone.constant is not None else (a, b)
+        if tint.tone.constant is not None and like_rulings(a.ruling_per_mm, b.ruling_per_mm):
+            neighbours.setdefault(tint.name, []).append(other)
     limit = evidence.limits["angle_taken"]
     for name, others in neighbours.items():
         tint = screens[name]
-        if tint.tone.constant is None:
-            continue
         nearest = min(others, key=lambda other: screens_apart_deg(tint, other))
         off = screens_apart_deg(tint, nearest)
         stands = f"stands {degrees(off)} from" if off >= 0.05 else "stands at the angle of"

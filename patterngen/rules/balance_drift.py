@@ -114,6 +114,6 @@ def _state(balance: Balance) -> str:
         length_mm = 1.0 / math.hypot(*balance.frequency_per_mm)
         return f"beat more slowly than the sheet is long (waves of {width(length_mm)})"
     first_orders = all(sum(abs(k) for k in orders) == 1 for orders in balance.orders.values())
-    if len(balance.orders) == 2 and first_orders:
+    if len(balance.names) == 2 and first_orders:
         return "share one angle and ruling"
     return "are in exact balance"

@@ -55,7 +55,7 @@ def _line(evidence: Evidence, screen: Screen, tone: float) -> Measurement:
         bad_when="below",
         warn_at=max(advised.value, hard.value) if advised else None,
         warn_source=advised.source if advised else None,
-        worst=_limits.worst(hard),
+        worst=_limits.worst(hard) if screen.tone.constant is not None else "warn",
     )
 
 

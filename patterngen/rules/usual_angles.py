@@ -43,6 +43,7 @@ _BY = "usual-angles"
 _OUTWEIGHS = 2.0
 _GREY_CHROMA = 15.0
 _FIT_DEG = 0.5
+_OPPOSITE = -0.7
 
 
 def _open(ink: str, **keys: object) -> dict[str, object]:
@@ -79,7 +80,7 @@ EXAMPLES: tuple[Example, ...] = (
     ),
     (
         preset(*_SEVEN),
-        _angles(cyan="15", magenta="75", yellow="0", black="45", orange="15", green="75", violet="0"),
+        _angles(cyan="15", magenta="75", yellow="0", black="45", orange="15", green="75", violet="45"),
     ),
     (
         preset(
@@ -238,12 +239,10 @@ def _place(
     for angle in order:
         if plan.room(ink, angle, taken) >= -_FIT_DEG:
             return angle, _reason(plan, ink, angle, slots)
-    partner = _seldom_met(plan, ink, taken) if len(plan.inks) > 4 else None
+    partner = _partner(plan, ink, taken) if len(plan.inks) > 4 else None
     if partner is not None:
-        grey = math.hypot(*_lab(plan, ink)[1:]) < _GREY_CHROMA
-        beside = (
-            "a colour that hides it best" if grey else "its opposite in hue, with which it is seldom printed"
-        )
+        opposite = _opposition(plan, ink, partner) < _OPPOSITE
+        beside = "its opposite in hue, with which it is seldom printed" if opposite else "the least crowded"
         return taken[partner][0], (
             f"No angle is left {degrees(plan.apart_deg)} from the others; "
             f"{ink} shares that of {partner}, {beside}. "
@@ -261,23 +260,35 @@ def _place(
     )
 
 
-def _seldom_met(plan: _Plan, ink: str, taken: Mapping[str, tuple[float, ...]]) -> str | None:
-    """The ink of most nearly opposite hue among the set's first four, one with no third ink on its angle."""
-    own = next(i for i in plan.inks if i.name == ink)
+def _partner(plan: _Plan, ink: str, taken: Mapping[str, tuple[float, ...]]) -> str | None:
+    """The one of the first four whose angle an ink beyond them shares: uncrowded and of opposite hue.
+
+    The lightest ink stands near two drawing inks, so only a light ink may join it there; and two
+    grey-like inks never share.
+    """
     first = [name for name in _order(plan)[:4] if name in taken and name != ink]
+    if not _is_light(plan, ink):
+        first = [name for name in first if name != plan.lightest]
+    if _chroma(plan, ink) < _GREY_CHROMA:
+        first = [name for name in first if _chroma(plan, name) >= _GREY_CHROMA]
     crowd = {name: sum(taken[name][0] in angles for angles in taken.values()) for name in first}
-    if math.hypot(*own.lab[1:]) < _GREY_CHROMA:
-        # two grey-like inks must not share an angle, and a grey has no opposite: it joins a colourful ink
-        first = [name for name in first if math.hypot(*_lab(plan, name)[1:]) >= _GREY_CHROMA]
-        return min(first, key=lambda name: (crowd[name], -math.hypot(*_lab(plan, name)[1:])), default=None)
+    return min(first, key=lambda name: (crowd[name], _opposition(plan, ink, name)), default=None)
 
-    def opposition(name: str) -> float:
-        a, b = _lab(plan, name)[1:]
-        return (
-            (a * own.lab[1] + b * own.lab[2]) / max(math.hypot(a, b), _GREY_CHROMA) / math.hypot(*own.lab[1:])
-        )
 
-    return min(first, key=lambda name: (crowd[name], opposition(name)), default=None)
+def _is_light(plan: _Plan, ink: str) -> bool:
+    """Whether an ink is nearer in lightness to the lightest ink than to the darkest."""
+    all_of_them = [other.lab[0] for other in plan.inks]
+    return _lab(plan, ink)[0] >= 0.5 * (min(all_of_them) + max(all_of_them))
+
+
+def _opposition(plan: _Plan, one: str, other: str) -> float:
+    """Cosine of the hue angle between two inks, -1 for complements; near 0 where one is grey."""
+    (_, a, b), (_, c, d) = _lab(plan, one), _lab(plan, other)
+    return (a * c + b * d) / max(_chroma(plan, one), _GREY_CHROMA) / max(_chroma(plan, other), _GREY_CHROMA)
+
+
+def _chroma(plan: _Plan, name: str) -> float:
+    return math.hypot(*_lab(plan, name)[1:])
 
 
 def _lab(plan: _Plan, name: str) -> tuple[float, float, float]:

@@ -132,15 +132,18 @@ def test_one_to_six_inks_keep_their_distance(count: int, shape: str) -> None:
 
 
 def test_expanded_gamut_shares_with_complements() -> None:
-    """common practice, no source: orange on cyan's angle, green on magenta's, violet on yellow's."""
-    found = angles(
-        _engine.derive(job_of(left_open("Cyan", "Magenta", "Yellow", "Black", "Orange", "Green", "Violet")))
-    )
-    assert (found["orange"], found["green"], found["violet"]) == (
-        found["cyan"],
-        found["magenta"],
-        found["yellow"],
-    )
+    """common practice, no source: orange on cyan's angle, green on magenta's, dark violet on black's."""
+    inks = ("Cyan", "Magenta", "Yellow", "Black", "Orange", "Green", "Violet")
+    found = angles(_engine.derive(job_of(left_open(*inks))))
+    shared = (found["orange"], found["green"], found["violet"])
+    assert shared == (found["cyan"], found["magenta"], found["black"])
+
+
+def test_a_light_violet_goes_to_yellow() -> None:
+    """common practice, no source: violet on yellow's angle, unless it is dark."""
+    preset = left_open("Cyan", "Magenta", "Yellow", "Black", "Violet")
+    preset["ink"][-1]["lab"] = [60, 30, -45]
+    assert angles(_engine.derive(job_of(preset)))["violet"] == 0.0
 
 
 def test_two_greys_never_share() -> None:

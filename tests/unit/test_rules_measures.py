@@ -281,6 +281,19 @@ def test_long_beats_in_colour_are_drift_too() -> None:
     assert "waves 9.7 mm long" in finding.message
 
 
+def test_shading_both_ways_is_one_finding_and_what_outlasts_the_sheet_is_left_to_balance() -> None:
+    crossed = band(128.0, 9.7, swing=3.4) | {"orders": [0, 1, 0, -1]}
+    slow = band(0.0, 40.0, swing=8.0)
+    assert only("balance-drift", pair(band(38.0, 9.7, swing=3.4), crossed, slow)).measured == 3.4
+
+
+def test_two_inks_of_first_order_share_angle_and_ruling() -> None:
+    two = balance(9.0, names=("magenta", "black"), orders={"magenta": [1, 0], "black": [-1, 0]})
+    assert (
+        "magenta and black share one angle and ruling" in only("balance-drift", pair(balance=(two,))).message
+    )
+
+
 def test_no_balance_is_measured_as_none() -> None:
     finding = only("balance-drift", pair())
     assert (finding.status, finding.measured, finding.margin) == ("pass", 0.0, 3.0)
@@ -364,6 +377,8 @@ def test_lines_warn_below_the_advised_width_and_fail_below_the_least() -> None:
     assert [line(t).status for t in (0.1, 0.2, 0.3)] == ["fail", "warn", "pass"]
     assert line(0.2).source.standing == "common practice"
     assert line(0.1).source.standing == "published"
+    fading = found("line-too-fine", evidence(MadeScreen("Black", 45.0, kind="lines", tone=PICTURE)))
+    assert [finding.status for finding in fading] == ["warn", "warn"]
     assert found("line-too-fine", evidence(MadeScreen("Black", 45.0))) == []
 
 
