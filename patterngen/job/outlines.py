@@ -435,7 +435,7 @@ class _Drawing:
         """(points in mm, whether closed by the drawing itself) of every subpath of a shape."""
         if tag == "path":
             try:
-                yield from _path(element.get("d", ""), matrix)
+                yield from path_points(element.get("d", ""), matrix)
             except OutlineError as error:
                 raise self._error(element, error.problem, value=error.value, allowed=error.allowed) from None
         elif tag in ("polygon", "polyline"):
@@ -656,7 +656,7 @@ _ARC = re.compile(
 )
 
 
-def _path(text: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, bool]]:
+def path_points(text: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, bool]]:
     """Subpaths of path data as points in mm and whether each is closed."""
     pieces = _COMMAND.split(text)
     if pieces[0].strip():
