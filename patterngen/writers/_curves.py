@@ -1,9 +1,8 @@
-"""Curves made easy on readers.
+"""Curves as chords that enclose exactly the curve's area.
 
 Readers turn a curve into a few straight pieces that lie inside it: at 2400 dpi a small dot
-drawn as four arcs comes out one to two and a half per cent too light in common ones.  So
-curves are handed over in pieces too short to lose anything, or as chords that enclose
-exactly the area of the curve.
+drawn as four arcs comes out one to two and a half per cent too light in common ones.
+Straight pieces they all draw as they are.
 """
 
 from __future__ import annotations
@@ -13,29 +12,13 @@ import numpy as np
 from patterngen.model.lattice import FloatArray
 from patterngen.model.shapes import Contour, Outline
 
-_MOST_TURN_RAD = np.pi / 8 + 1e-9
 _SAGITTA_MM = 6e-4
-"""Height of a curve over its chord; once the area is made good no point is off by more than two thirds of it."""
+"""Height of a curve over its chord; once the area is made good no point is off by more than 2/3 of it."""
 
 
 def content(outline: Outline) -> bytes:
     """What makes an outline the same as another one."""
     return b"|".join(c.start.tobytes() + c.bends.tobytes() for c in outline.contours)
-
-
-def pieces(start: FloatArray, bend: FloatArray) -> FloatArray:
-    """The same cubic (3, 2) from `start` in n cubics (n, 3, 2), none turning by more than 22.5 degrees."""
-    corners = np.concatenate([start[None, :], bend])
-    legs = np.diff(corners, axis=0)
-    legs = legs[np.hypot(legs[:, 0], legs[:, 1]) > 0]
-    if len(legs) < 2:
-        return bend[None]
-    cross = legs[:-1, 0] * legs[1:, 1] - legs[:-1, 1] * legs[1:, 0]
-    turn = np.abs(np.arctan2(cross, np.sum(legs[:-1] * legs[1:], axis=1))).sum()
-    n = max(1, int(np.ceil(turn / _MOST_TURN_RAD)))
-    u = np.arange(n + 1)[:, None] / n
-    at, slope = _point(corners, u), _slope(corners, u) / (3 * n)
-    return np.stack([at[:-1] + slope[:-1], at[1:] - slope[1:], at[1:]], axis=1)
 
 
 def chords(contour: Contour, *, steps_mm: FloatArray) -> FloatArray:
@@ -81,11 +64,6 @@ def chords(contour: Contour, *, steps_mm: FloatArray) -> FloatArray:
 def _point(corners: FloatArray, u: FloatArray) -> FloatArray:
     a, b, c, d = corners
     return np.asarray((1 - u) ** 3 * a + 3 * (1 - u) ** 2 * u * b + 3 * (1 - u) * u**2 * c + u**3 * d)
-
-
-def _slope(corners: FloatArray, u: FloatArray) -> FloatArray:
-    a, b, c, d = corners
-    return np.asarray(3 * ((1 - u) ** 2 * (b - a) + 2 * (1 - u) * u * (c - b) + u**2 * (d - c)))
 
 
 def _area(ring: FloatArray) -> float:

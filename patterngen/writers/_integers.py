@@ -13,7 +13,7 @@ from patterngen.model.shapes import Polygons
 
 UNIT_MM = 1e-4
 """One whole number: 0.1 micrometre, so that no corner moves by more than 0.05 along either axis."""
-_LARGEST = 2**23
+LARGEST = 2**23
 """Whole numbers of this size are still exact in the single precision that readers calculate in."""
 
 
@@ -60,7 +60,7 @@ def whole(polygons: Polygons) -> WholePolygons:
     """
     steps_mm = np.hypot(polygons.frame.steps_mm[:, 0], polygons.frame.steps_mm[:, 1])
     low, high = polygons.uv.min(axis=0), polygons.uv.max(axis=0)
-    unit = np.maximum(UNIT_MM / steps_mm, 0.5 * (high - low) / _LARGEST)
+    unit = np.maximum(UNIT_MM / steps_mm, 0.5 * (high - low) / LARGEST)
     middle = np.rint(0.5 * (low + high) / unit)
     points = np.rint(polygons.uv / unit) - middle
     frame = Lattice(

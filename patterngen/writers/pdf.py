@@ -23,8 +23,8 @@ import patterngen
 from patterngen.model.design import Design, Layer
 from patterngen.model.job import Job, Lab
 from patterngen.model.lattice import FloatArray, Lattice
-from patterngen.model.shapes import Contour, Outline, Polygons, Stamps
-from patterngen.writers._curves import content, pieces
+from patterngen.model.shapes import Outline, Polygons, Stamps
+from patterngen.writers._curves import chords, content
 from patterngen.writers._integers import whole
 from patterngen.writers._number import integers, lookup, number, numbers, rows
 from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
@@ -40,8 +40,8 @@ _BOX_ROOM = 0.25
 _STAMPS_A_STREAM = 100_000
 _CORNERS_A_STREAM = 200_000
 _SHAPES_A_FILL = 500
-_CELL_DIGITS = 7
-"""Digits of an outline's coordinates in its cell."""
+_CELL_DIGITS = 6
+"""Decimals of an outline's coordinates in its cell: a nanometre on a pitch of a millimetre."""
 _D50 = (0.9642, 1.0, 0.8249)
 
 
@@ -138,7 +138,7 @@ class _SheetWriter:
         self.pdf, self.page, self.paper_lab = pdf, page, paper_lab
         self.streams: list[pikepdf.Stream] = []
         self.groups: list[pikepdf.Object] = []
-        self.forms: dict[tuple[bytes, int], int] = {}
+        self.forms: dict[tuple[bytes, bytes, int], int] = {}
         resources = pdf.pages[0].Resources
         for key in ("/ColorSpace", "/ExtGState", "/Properties", "/XObject"):
             if key not in resources:
@@ -214,28 +214,30 @@ class _SheetWriter:
         kinds, kind, uses = np.unique(
             variety * (BLOCK**2 + 1) + size, return_inverse=True, return_counts=True
         )
-        form = np.zeros(len(kinds), dtype=np.int64)
-        lone = np.zeros(len(kinds), dtype=bool)
-        for k, (which, length) in enumerate(zip(*divmod(kinds, BLOCK**2 + 1), strict=True)):
-            block = length >= _LEAST_BLOCK and length * uses[k] >= _WORTH
-            form[k] = self._form(stamps.outlines[which], int(length) if block else 1)
-            lone[k] = not block
-        repeat = np.where(lone[kind], size, 1)
+        which, length = np.divmod(kinds, BLOCK**2 + 1)
+        block = (length >= _LEAST_BLOCK) & (length * uses >= _WORTH)
+        used, index = np.unique(which, return_inverse=True)
+        steps_mm = stamps.lattice.steps_mm
+        form = np.array([self._form(stamps.outlines[k], steps_mm, 1) for k in used], dtype=np.int64)[index]
+        for k in np.flatnonzero(block):
+            form[k] = self._form(stamps.outlines[which[k]], steps_mm, int(length[k]))
+        repeat = np.where(block[kind], 1, size)
         begin = np.cumsum(repeat) - repeat
         ij = np.repeat(ij, repeat, axis=0)
         ij[:, 0] += np.arange(len(ij)) - np.repeat(begin, repeat)
         return ij, np.repeat(form[kind], repeat)
 
-    def _form(self, outline: Outline, length: int) -> int:
+    def _form(self, outline: Outline, steps_mm: FloatArray, length: int) -> int:
         """The number of the form that stamps an outline `length` times along a row."""
-        key = (content(outline), length)
+        key = (content(outline), steps_mm.tobytes(), length)
         if key in self.forms:
             return self.forms[key]
         if length == 1:
-            text, inner = b"".join(_contour(c) for c in outline.contours) + b"f\n", []
+            rings = [_ring(chords(contour, steps_mm=steps_mm)) for contour in outline.contours]
+            text, inner = b"".join(rings) + b"f\n", []
         else:
             step = BLOCK if length > BLOCK else 1
-            part = self._form(outline, step)
+            part = self._form(outline, steps_mm, step)
             inner = [f"/Form{part}"]
             text = b"".join(b"q 1 0 0 1 %d 0 cm /Form%d Do Q\n" % (k, part) for k in range(0, length, step))
         u0, v0, u1, v1 = outline.bounds()
@@ -273,21 +275,10 @@ def _cut(stamps: Stamps) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[
     )
 
 
-def _contour(contour: Contour) -> bytes:
-    """A closed curve in cell units."""
-
-    def point(uv: FloatArray) -> str:
-        return numbers(*np.round(uv, _CELL_DIGITS))
-
-    here = contour.start
-    text = [f"{point(here)} m"]
-    for bend, straight in zip(contour.bends, contour.straight, strict=True):
-        if straight:
-            text.append(f"{point(bend[2])} l")
-        else:
-            text += [f"{point(a)} {point(b)} {point(end)} c" for a, b, end in pieces(here, bend)]
-        here = bend[2]
-    return (" ".join(text) + " h\n").encode()
+def _ring(corners: FloatArray) -> bytes:
+    """A closed figure of straight pieces in cell units."""
+    points = [numbers(*corner) for corner in np.round(corners, _CELL_DIGITS)]
+    return f"{points[0]} m {' '.join(f'{point} l' for point in points[1:])} h\n".encode()
 
 
 def _separation(name: str, *, solid: Lab, paper: Lab) -> Array:

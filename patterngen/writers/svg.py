@@ -26,7 +26,7 @@ from patterngen.model.job import Ink, SheetSize
 from patterngen.model.lattice import FloatArray, Lattice
 from patterngen.model.shapes import Batch, Contour, Outline, Polygons, Stamps
 from patterngen.writers._curves import chords, content
-from patterngen.writers._integers import UNIT_MM, whole
+from patterngen.writers._integers import LARGEST, UNIT_MM, whole
 from patterngen.writers._number import integers, lookup, number, numbers, rows
 from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
 
@@ -35,6 +35,8 @@ _TEXT_A_PATH = 2_000_000
 _SHAPES_A_PATH = 20_000
 _MOST_EXACT = 100_000
 """Shapes drawn one by one, above which the sheet is drawn lighter: about 15 MB of outlines."""
+_STAMP_UNIT_MM = UNIT_MM / 4
+"""Shapes that repeat are rounded finer, for each rounds the same way and their area would be off together."""
 _BLOCKS = (1024, 512, 256, 128, 64, 32, 16, 8, 4)
 """Lengths of the blocks that long runs are made of."""
 
@@ -104,6 +106,8 @@ class _InkWriter:
         """One screen as a group of its own."""
         group = self.drawing.g(**{"data-screen": screen})
         for batch in batches:
+            if batch.total == 0:
+                continue
             if isinstance(batch, Polygons):
                 groups = self._polygons(batch)
             else:
@@ -125,7 +129,7 @@ class _InkWriter:
 
     def _exact(self, stamps: Stamps) -> Iterator[svgwrite.container.Group]:
         """Repeated shapes as chords, long runs as blocks."""
-        cells = _cells(stamps.lattice)
+        cells = _cells(stamps)
         group = self._frame(Lattice(stamps.lattice.origin_mm, stamps.lattice.steps_mm / cells[:, None]))
         used = np.unique(stamps.variety)
         for which in used:
@@ -155,7 +159,7 @@ class _InkWriter:
 
     def _light(self, stamps: Stamps) -> Iterator[svgwrite.container.Group]:
         """Repeated shapes as round caps, where they are discs, and curves; paths by variety."""
-        cells = _cells(stamps.lattice)
+        cells = _cells(stamps)
         discs = self._frame(stamps.lattice, fill="none", stroke=self.colour, stroke_linecap="round")
         outlines = self._frame(Lattice(stamps.lattice.origin_mm, stamps.lattice.steps_mm / cells[:, None]))
         places, variety = stamps.expand()
@@ -174,8 +178,6 @@ class _InkWriter:
 
     def _polygons(self, polygons: Polygons) -> Iterator[svgwrite.container.Group]:
         """Loose polygons, whole shapes together in a path."""
-        if polygons.total == 0:
-            return
         figures = whole(polygons)
         group = self._frame(figures.frame)
         starts = figures.ring_start[:-1]
@@ -234,9 +236,11 @@ class _Figure:
             yield rows(b"m", integers(step[:, 0]), b" ", integers(step[:, 1]), self.body)
 
 
-def _cells(lattice: Lattice) -> FloatArray:
-    """Whole numbers (2,) to a lattice step, fine enough for `UNIT_MM`."""
-    return np.ceil(np.hypot(lattice.steps_mm[:, 0], lattice.steps_mm[:, 1]) / UNIT_MM)
+def _cells(stamps: Stamps) -> FloatArray:
+    """Whole numbers (2,) to a lattice step: `_STAMP_UNIT_MM`, or coarser on a very large sheet."""
+    steps_mm = stamps.lattice.steps_mm
+    farthest = max(1, int(np.abs(stamps.first).max()), int((stamps.first[:, 0] + stamps.count).max()))
+    return np.minimum(np.ceil(np.hypot(steps_mm[:, 0], steps_mm[:, 1]) / _STAMP_UNIT_MM), LARGEST // farthest)
 
 
 def _rounded(uv: FloatArray, cells: FloatArray) -> NDArray[np.int64]:
