@@ -15,7 +15,8 @@ PACKAGE = Path(patterngen.__file__).parent
 
 # Lower lines may be imported by higher ones, never the other way, and rooms in one line not by each other.
 LINES = [
-    ["cli", "__main__", "__init__"],
+    ["__main__", "__init__"],
+    ["cli"],
     ["sweep"],
     ["pipeline"],
     ["job", "solve", "measure", "writers"],
