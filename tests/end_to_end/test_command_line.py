@@ -50,10 +50,10 @@ def test_the_same_preset_gives_the_same_bytes(tmp_path: Path) -> None:
 
 
 def test_set_overrides_one_value() -> None:
-    done = run("verify", SHIPPED["carton"], "--json", "--set", 'screen.cyan.angle="20 deg"')
+    done = run("verify", SHIPPED["carton-wrong-angle"], "--json", "--set", 'screen.magenta.angle="75 deg"')
     screens = {screen["name"]: screen for screen in json.loads(done.stdout)["screens"]}
-    assert screens["cyan"]["angle_deg"] == pytest.approx(20.0)
-    assert done.returncode == 1
+    assert screens["magenta"]["angle_deg"] == pytest.approx(75.0)
+    assert done.returncode == 0
 
 
 @pytest.mark.parametrize(
