@@ -29,6 +29,7 @@ MOST_ELEMENTS = 50_000
 MOST_POINTS = 1_000_000
 CHORD_ERROR_MM = 1e-4
 _SMALLEST_MM2 = 1e-8
+_MOST_WORK = 2_000_000_000
 _LARGEST = 1e7
 _MM_PER_PX = 25.4 / 96
 _SVG = "{http://www.w3.org/2000/svg}"
@@ -403,10 +404,7 @@ class _Drawing:
         for ring, closed in self._subpaths(element, tag, matrix):
             self._points += len(ring)
             if self._points > MOST_POINTS:
-                raise OutlineError(
-                    "its outlines have too many points",
-                    allowed=f"at most {MOST_POINTS}, with curves as chords {CHORD_ERROR_MM * 1000:g} um off",
-                )
+                raise _too_many_points()
             if len(ring) < 3 or np.ptp(ring, axis=0).max() < 1e-9:
                 self._flat += 1
                 continue
@@ -611,40 +609,41 @@ def fill(rings: list[FloatArray], *, even_odd: bool) -> tuple[BaseGeometry, bool
     """(what rings (n, 2) fill by the even-odd or the non-zero rule, whether any ring crosses itself)."""
     import shapely
 
-    polygons = [shapely.Polygon(ring) for ring in rings]
-    valid = [bool(polygon.is_valid) for polygon in polygons]
+    polygons = np.array([shapely.Polygon(ring) for ring in rings])
+    valid = shapely.is_valid(polygons)
     if len(rings) == 1 and valid[0]:
         return polygons[0], False
-    lines = shapely.union_all([shapely.LinearRing(ring) for ring in rings])
+    lines = shapely.union_all(shapely.get_exterior_ring(polygons))
     faces = shapely.get_parts(shapely.polygonize(shapely.get_parts(lines)))
     inside = shapely.get_coordinates(shapely.point_on_surface(faces))
-    turns = _winding(rings, inside)
+    turns = np.zeros(len(faces), dtype=np.int64)
+    work = 0
+    for ring, polygon, sound in zip(rings, polygons, valid, strict=True):
+        low, high = ring.min(axis=0), ring.max(axis=0)
+        near = np.flatnonzero(((inside >= low) & (inside <= high)).all(axis=1))
+        if sound:
+            # a ring that does not cross itself turns once around what it holds
+            shapely.prepare(polygon)
+            turns[near] += shapely.contains_xy(polygon, inside[near]) * (1 if _signed_area(ring) > 0 else -1)
+            continue
+        work += len(near) * len(ring)
+        if work > _MOST_WORK:
+            raise OutlineError("its outlines cross too often", allowed="simpler outlines: unite them first")
+        turns[near] += [_winding(ring, point) for point in inside[near]]
     kept = faces[turns % 2 == 1] if even_odd else faces[turns != 0]
     # a ring that touches itself in a point is not "valid" but crosses nothing
-    crossing = any(not v and not shapely.LinearRing(r).is_simple for v, r in zip(valid, rings, strict=True))
-    return shapely.union_all(kept), crossing
+    crossing = not shapely.is_simple(shapely.get_exterior_ring(polygons[~valid])).all()
+    return shapely.union_all(kept), bool(crossing)
 
 
-def _winding(rings: list[FloatArray], points: FloatArray) -> NDArray[np.int64]:
-    """How often all rings together turn around each point (n, 2)."""
-    turns = np.zeros(len(points), dtype=np.int64)
-    work = 0
-    for ring in rings:
-        low, high = ring.min(axis=0), ring.max(axis=0)
-        near = np.flatnonzero(((points >= low) & (points <= high)).all(axis=1))
-        work += len(near) * len(ring)
-        if work > 5_000_000_000:
-            raise OutlineError(
-                "its outlines cross too often", allowed="simpler outlines: unite them in the drawing program"
-            )
-        x0, y0 = ring.T
-        x1, y1 = np.roll(ring, -1, axis=0).T
-        for index in near:
-            x, y = points[index]
-            rising, falling = (y0 <= y) & (y1 > y), (y0 > y) & (y1 <= y)
-            left = (x1 - x0) * (y - y0) - (x - x0) * (y1 - y0)
-            turns[index] += np.count_nonzero(rising & (left > 0)) - np.count_nonzero(falling & (left < 0))
-    return turns
+def _winding(ring: FloatArray, point: FloatArray) -> int:
+    """How often a ring (n, 2) turns around a point, counted along the ray to its right."""
+    x, y = point
+    x0, y0 = ring.T
+    x1, y1 = np.roll(ring, -1, axis=0).T
+    left = (x1 - x0) * (y - y0) - (x - x0) * (y1 - y0)
+    rising, falling = (y0 <= y) & (y1 > y), (y0 > y) & (y1 <= y)
+    return int(np.count_nonzero(rising & (left > 0)) - np.count_nonzero(falling & (left < 0)))
 
 
 _COMMAND = re.compile(r"([MmZzLlHhVvCcSsQqTtAa])")
@@ -663,12 +662,14 @@ def path_points(text: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, boo
         raise _bad_path(pieces[0])
     if len(pieces) > 1 and pieces[1] not in "Mm":
         raise _bad_path(text)
+    if len(pieces) // 2 > MOST_POINTS:
+        raise _too_many_points()
     here = start = np.zeros(2)
     run: list[FloatArray] = []
     before, control = "", here
-    for letter, words in zip(pieces[1::2], pieces[2::2], strict=True):
+    for letter, texts in _runs(pieces[1::2], pieces[2::2]):
         command = letter.upper()
-        values = _arguments(command, words)
+        values = np.array([row for words in texts for row in _arguments(command, words)], dtype=float)
         base = letter.islower()
         if command == "M":
             if run:
@@ -709,8 +710,19 @@ def path_points(text: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, boo
         yield np.concatenate(run), False
 
 
-def _arguments(command: str, text: str) -> FloatArray:
-    """(n, size) numbers of one command; strict: whatever is no number is refused."""
+def _runs(letters: list[str], texts: list[str]) -> Iterator[tuple[str, list[str]]]:
+    """Commands of one letter in a row together: what comes from drawing programs then goes in few steps."""
+    at = 0
+    while at < len(letters):
+        end = at + 1
+        while letters[at] not in "MmZz" and end < len(letters) and letters[end] == letters[at]:
+            end += 1
+        yield letters[at], texts[at:end]
+        at = end
+
+
+def _arguments(command: str, text: str) -> list[list[float]]:
+    """Numbers of one command, in rows of as many as it takes; whatever is no number is refused."""
     size = _SIZES[command]
     if command == "A":
         rows, at = [], 0
@@ -722,15 +734,14 @@ def _arguments(command: str, text: str) -> FloatArray:
             at = match.end()
         if at < len(text.rstrip()) or not rows:
             raise _bad_path(f"A{text}")
-        values = np.array(rows)
     else:
         numbers = _all_numbers(text, None)
         if numbers is None or (size and (len(numbers) % size or not numbers)) or (not size and numbers):
             raise _bad_path(f"{command}{text}")
-        values = np.array(numbers).reshape(-1, max(size, 1))
-    if values.size and not np.abs(values).max() <= _LARGEST:
+        rows = [numbers[at : at + size] for at in range(0, len(numbers), size)] if size else []
+    if any(not -_LARGEST <= number <= _LARGEST for row in rows for number in row):
         raise _bad_path(f"{command}{text}")
-    return values
+    return rows
 
 
 def _corners(command: str, values: FloatArray, here: FloatArray, relative: bool) -> FloatArray:
@@ -857,6 +868,13 @@ def _all_numbers(text: str, count: int | None) -> list[float] | None:
 def _declarations(text: str) -> Mapping[str, str]:
     pairs = (part.split(":", 1) for part in text.split(";") if ":" in part)
     return {name.strip().lower(): value.replace("!important", "").strip() for name, value in pairs}
+
+
+def _too_many_points() -> OutlineError:
+    return OutlineError(
+        "its outlines have too many points",
+        allowed=f"at most {MOST_POINTS}, with curves as chords {CHORD_ERROR_MM * 1000:g} um off",
+    )
 
 
 def _bad_path(text: str) -> OutlineError:
