@@ -32,7 +32,21 @@ _HOME = {
     "MachineError": "patterngen.errors",
 }
 
-__all__ = ["__version__", *sorted(_HOME)]  # noqa: PLE0604
+__all__ = [
+    "__version__",
+    "InputError",
+    "Job",
+    "MachineError",
+    "Verdict",
+    "build",
+    "load",
+    "new",
+    "presets",
+    "save",
+    "schema",
+    "verify",
+    "why",
+]
 
 if TYPE_CHECKING:
     from patterngen.errors import InputError, MachineError

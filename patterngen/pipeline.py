@@ -11,9 +11,10 @@ import numpy as np
 
 from patterngen import registry
 from patterngen.errors import Fault, InputError
+from patterngen.model.cells import nearest_cell, smallest_supercell
 from patterngen.model.design import Design, Layer, Sheet
 from patterngen.model.evidence import Evidence
-from patterngen.model.job import Job
+from patterngen.model.job import Job, Press
 from patterngen.model.screen import Screen
 from patterngen.model.seeing import Viewer
 from patterngen.model.verdict import Finding, Verdict
@@ -101,7 +102,7 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         job=job.name,
         title=job.title,
         status=overall(findings),
-        screens=tuple(screen_facts(screen, textures[screen.name], extremes[screen.name]) for screen in screens),
+        screens=tuple(screen_facts(screen, textures[screen.name], extremes[screen.name], job.press) for screen in screens),
         beats=beats,
         balance=balance,
         findings=findings,
@@ -165,17 +166,17 @@ def tone_extremes(screen: Screen) -> tuple[float, float] | None:
     if screen.tone.constant is not None:
         return (screen.tone.constant, screen.tone.constant) if screen.tone.constant > 0.0 else None
     x0, y0, x1, y1 = screen.area.box_mm
-    steps = 512
-    x, y = np.meshgrid(
-        x0 + (np.arange(steps) + 0.5) / steps * (x1 - x0), y0 + (np.arange(steps) + 0.5) / steps * (y1 - y0)
-    )
-    x, y = x.ravel(), y.ravel()
+    steps = (np.arange(512) + 0.5) / 512
+    grid_x, grid_y = np.meshgrid(x0 + steps * (x1 - x0), y0 + steps * (y1 - y0))
+    x, y = grid_x.ravel(), grid_y.ravel()
     tones = screen.tone.at(x, y, size_mm=1.0 / screen.ruling_per_mm)[screen.area.contains(x, y)]
     tones = tones[tones > 1e-4]
     return (float(tones.min()), float(tones.max())) if len(tones) else None
 
 
-def screen_facts(screen: Screen, texture: OwnTexture, extremes: tuple[float, float] | None) -> dict[str, Any]:
+def screen_facts(
+    screen: Screen, texture: OwnTexture, extremes: tuple[float, float] | None, press: Press
+) -> dict[str, Any]:
     """What the verdict says of one screen, its own visibility (without any other screen) included."""
     tone = screen.tone.constant
     return {
@@ -192,6 +193,29 @@ def screen_facts(screen: Screen, texture: OwnTexture, extremes: tuple[float, flo
         "contrast": texture.contrast,
         "visibility": texture.visibility,
         "visibility_far": texture.visibility_far,
+        "imager_cell": _imager_cell(screen, press),
+    }
+
+
+def _imager_cell(screen: Screen, press: Press) -> dict[str, Any] | None:
+    """What one cell of the imager's pixels makes of a screen, and the supercell that keeps the press's errors."""
+    if press.imager_per_mm is None:
+        return None
+    cells = press.imager_per_mm / screen.ruling_per_mm
+    one = nearest_cell(cells=cells, angle_deg=screen.angle_deg)
+    kept = None
+    if press.angle_error_deg > 0.0 and press.size_error > 0.0:
+        kept = smallest_supercell(
+            cells=cells,
+            angle_deg=screen.angle_deg,
+            angle_error_deg=press.angle_error_deg,
+            ruling_error=press.size_error,
+        )
+    return {
+        "pixels": [one.a, one.b],
+        "angle_deg": one.angle_deg,
+        "ruling_per_mm": one.ruling(press.imager_per_mm),
+        "supercell_within_press_errors": None if kept is None else kept.multiple,
     }
 
 

@@ -52,7 +52,9 @@ class Viewer:
 class InkColours(Protocol):
     """Inks and overprints in XYZ, the perfect diffuser at Y = 1."""
 
-    yule_nielsen: float
+    @property
+    def yule_nielsen(self) -> float:
+        """Yule-Nielsen n."""
 
     def primaries(self, inks: Sequence[str]) -> FloatArray:
         """XYZ of every combination of screens, shape (2,) * n + (3,).
