@@ -176,7 +176,8 @@ def _grow(
         offered = candidates.weight[order]
         cx, cy = candidates.frequency_per_mm[order, 0], candidates.frequency_per_mm[order, 1]
         csign = _leading_sign(candidates.orders)[order] if len(order) else np.zeros(0, dtype=np.int8)
-        enough = weight * need[0]
+        # with a comb a longer sum may need less
+        enough = weight * need.max()
         count = _how_many(offered, enough)
         if int(count.sum()) > 8 * budget:
             raise _TooMuch
