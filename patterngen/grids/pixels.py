@@ -30,6 +30,7 @@ class PixelGrid(Grid):
     samples = True
 
     def __init__(self, request: GridRequest) -> None:
+        """The request's ruling is the resolution."""
         self.name = request.name
         self.ruling_per_mm, self.angle_deg = request.ruling_per_mm, request.angle_deg
         self.frequencies_per_mm = self.ruling_per_mm * np.stack(

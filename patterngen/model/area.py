@@ -105,11 +105,13 @@ class ToneField:
         inside = (x >= x0) & (x <= x1) & (y >= y0) & (y <= y1)
         u = np.clip((x - x0) / (x1 - x0) * columns - 0.5, 0.0, columns - 1.0)
         v = np.clip((y1 - y) / (y1 - y0) * rows - 0.5, 0.0, rows - 1.0)
-        i, j = np.minimum(u.astype(np.int64), max(columns - 2, 0)), np.minimum(v.astype(np.int64), max(rows - 2, 0))
+        i = np.minimum(u.astype(np.int64), max(columns - 2, 0))
+        j = np.minimum(v.astype(np.int64), max(rows - 2, 0))
         a, b = u - i, v - j
         i1, j1 = np.minimum(i + 1, columns - 1), np.minimum(j + 1, rows - 1)
-        tone = (1 - b) * ((1 - a) * values[j, i] + a * values[j, i1]) + b * ((1 - a) * values[j1, i] + a * values[j1, i1])
-        return np.where(inside, tone, 0.0)
+        above = (1 - a) * values[j, i] + a * values[j, i1]
+        below = (1 - a) * values[j1, i] + a * values[j1, i1]
+        return np.where(inside, (1 - b) * above + b * below, 0.0)
 
     def averaged(self, *, size_mm: float) -> ToneField:
         """The same field, its picture averaged once for `size_mm`, for whoever asks `at` many times."""
@@ -130,7 +132,8 @@ class ToneField:
             return self.values, self.box_mm
         # rows and columns that do not fill a block are averaged over what is there
         edges_r, edges_c = np.arange(0, rows, block), np.arange(0, columns, block)
-        sums = np.add.reduceat(np.add.reduceat(self.values, edges_r, axis=0, dtype=np.float64), edges_c, axis=1)
+        by_row = np.add.reduceat(self.values, edges_r, axis=0, dtype=np.float64)
+        sums = np.add.reduceat(by_row, edges_c, axis=1)
         n_r = np.diff(np.append(edges_r, rows))
         n_c = np.diff(np.append(edges_c, columns))
         mean = (sums / np.outer(n_r, n_c)).astype(np.float32)

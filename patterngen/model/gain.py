@@ -20,7 +20,7 @@ def tone_value_increase(tone: FloatArray | float, *, half_tone: float) -> FloatA
     0.66
     """
     t = np.asarray(tone, dtype=float)
-    return np.clip(t + 4 * half_tone * t * (1 - t), 0.0, 1.0)
+    return np.asarray(np.clip(t + 4 * half_tone * t * (1 - t), 0.0, 1.0))
 
 
 class EdgeGrowth:
@@ -38,10 +38,11 @@ class EdgeGrowth:
     """
 
     def __init__(self, *, edge_mm: float, edge_per_mm: Callable[[FloatArray], FloatArray], knots: int = 257) -> None:
+        """Tables the growth once; `edge_per_mm` is asked for tones between 0 and 1 only."""
         self._edge_mm = edge_mm
         self._h = np.linspace(0.0, 0.5 * np.pi, knots)
         step = self._h[1]
-        # Gauss-Legendre with four nodes between neighbouring knots: the ends, where there is no edge, are never asked
+        # Gauss-Legendre with four nodes between knots: the ends, where there is no edge, are never asked
         node, weight = np.polynomial.legendre.leggauss(4)
         at = self._h[:-1, None] + step * 0.5 * (node + 1)
         slope = np.sin(2 * at) / edge_per_mm((np.sin(at) ** 2).ravel()).reshape(at.shape)
@@ -66,15 +67,15 @@ def _hermite(x: FloatArray, y: FloatArray, slope: FloatArray, at: FloatArray) ->
     h = x[i + 1] - x[i]
     u = (at - x[i]) / h
     v = 1 - u
-    return np.asarray(
-        y[i] * v * v * (1 + 2 * u) + y[i + 1] * u * u * (1 + 2 * v) + h * u * v * (slope[i] * v - slope[i + 1] * u)
-    )
+    ends = y[i] * v * v * (1 + 2 * u) + y[i + 1] * u * u * (1 + 2 * v)
+    return np.asarray(ends + h * u * v * (slope[i] * v - slope[i + 1] * u))
 
 
 class PrintedTone:
     """Plate tone to printed tone as a `Gain` asks: the tone value increase, then the growth of edges."""
 
     def __init__(self, gain: Gain, *, edge_per_mm: Callable[[FloatArray], FloatArray]) -> None:
+        """`edge_per_mm` is asked only where the gain grows edges."""
         self._half_tone = gain.half_tone
         self._growth = EdgeGrowth(edge_mm=gain.edge_mm, edge_per_mm=edge_per_mm) if gain.edge_mm else None
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -50,24 +51,24 @@ class Ranges:
             return []
         part = (np.cumsum(self.count) - 1) // size
         cuts = np.searchsorted(part, np.arange(part[-1] + 2))
-        return [
-            Ranges(self.row[a:b], self.first[a:b], self.last[a:b])
-            for a, b in zip(cuts[:-1], cuts[1:], strict=True)
-            if b > a
-        ]
+        return [Ranges(self.row[a:b], self.first[a:b], self.last[a:b]) for a, b in pairwise(cuts) if b > a]
 
 
 class Ground:
     """An area in the coordinates of a lattice."""
 
     def __init__(self, area: Area, lattice: Lattice) -> None:
+        """Takes the area into the lattice's coordinates."""
         import shapely
 
         self.lattice = lattice
         self.geometry: BaseGeometry = shapely.transform(area.geometry(), lattice.locate)
 
     def places(self, radius: float) -> tuple[Ranges, Ranges]:
-        """(inside, rim): places whose shape of that radius (lattice units) surely lies inside, and those it may cross."""
+        """(inside, rim): places whose shape surely lies inside, and those whose shape the outline may cross.
+
+        `radius` holds every shape about its place, in lattice units.
+        """
         import shapely
 
         # eight chords a quarter circle fall short by half a percent
@@ -76,21 +77,29 @@ class Ground:
         return inside, _difference(all_round, inside)
 
     def cut(self, shapes: Geometries) -> tuple[BoolArray, Geometries, NDArray[np.int64]]:
-        """Shapes (n,) against the area: (which lie wholly inside (n,), what is left of the cut ones (m,), whose they are (m,))."""
+        """Shapes (n,) against the area: (which lie wholly inside (n,), the cut ones' rests (m,), whose (m,))."""
         whole = np.zeros(len(shapes), dtype=bool)
         pieces: list[Geometries] = []
         owners: list[NDArray[np.int64]] = []
         if len(shapes):
             import shapely
 
-            self._cut(shapely, self.geometry, shapes, np.arange(len(shapes)), shapely.bounds(shapes), whole, pieces, owners)
+            index, bounds = np.arange(len(shapes)), shapely.bounds(shapes)
+            self._cut(shapely, self.geometry, shapes, index, bounds, whole, pieces, owners)
         if not pieces:
             return whole, np.empty(0, dtype=object), np.empty(0, dtype=np.int64)
         return whole, np.concatenate(pieces), np.concatenate(owners)
 
     def _cut(
-        self, shapely: Any, near: Any, shapes: Geometries, index: NDArray[np.int64], bounds: FloatArray,
-        whole: BoolArray, pieces: list[Geometries], owners: list[NDArray[np.int64]],
+        self,
+        shapely: Any,
+        near: Any,
+        shapes: Geometries,
+        index: NDArray[np.int64],
+        bounds: FloatArray,
+        whole: BoolArray,
+        pieces: list[Geometries],
+        owners: list[NDArray[np.int64]],
     ) -> None:
         if not len(index) or near.is_empty:
             return
@@ -122,7 +131,7 @@ def _segments(geometry: BaseGeometry) -> tuple[FloatArray, FloatArray]:
     """Ends (n, 2), (n, 2) of every edge."""
     import shapely
 
-    rings = shapely.get_rings(geometry)
+    rings = shapely.get_rings(shapely.get_parts(geometry))
     xy, of = shapely.get_coordinates(rings, return_index=True)
     joined = of[:-1] == of[1:]
     return xy[:-1][joined], xy[1:][joined]
@@ -163,7 +172,10 @@ def _difference(large: Ranges, small: Ranges) -> Ranges:
 
 
 def polygons(geometries: Geometries, frame: Lattice) -> Polygons:
-    """Polygons (and parts of mixed leftovers that have an area) as columns; outlines counter-clockwise, holes clockwise."""
+    """Polygons as columns, of mixed leftovers the parts that have an area.
+
+    Outlines come out counter-clockwise, holes clockwise.
+    """
     import shapely
 
     parts = shapely.get_parts(geometries)
@@ -189,7 +201,7 @@ def polygons(geometries: Geometries, frame: Lattice) -> Polygons:
     return Polygons(frame, xy, starts.astype(np.int32), shape_start.astype(np.int32))
 
 
-def ring_polygons(rings: Sequence[FloatArray], which: NDArray[np.int64], offsets: FloatArray) -> Geometries:
+def ring_polygons(rings: Sequence[FloatArray], which: NDArray[np.int32], offsets: FloatArray) -> Geometries:
     """Shapely polygons: ring number which[k] moved by offsets[k], all at once."""
     import shapely
 

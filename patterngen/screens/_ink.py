@@ -19,10 +19,9 @@ class InkScreen(Screen):
     """A screen of one ink, from a request whose ruling and angle are settled."""
 
     def __init__(self, request: ScreenRequest) -> None:
+        """Raises `InputError` while ruling or angle are open."""
         if request.ruling_per_mm is None or request.angle_deg is None:
-            raise InputError(
-                Fault("", f"screen.{request.name}", "ruling and angle must be settled before its shapes are made")
-            )
+            raise InputError(Fault("", f"screen.{request.name}", "ruling and angle must be settled first"))
         self.name, self.ink = request.name, request.ink
         self.ruling_per_mm, self.angle_deg = request.ruling_per_mm, request.angle_deg
         self.pitch_mm = 1.0 / request.ruling_per_mm
@@ -32,14 +31,19 @@ class InkScreen(Screen):
         self.frame = Lattice.square(pitch_mm=self.pitch_mm, angle_deg=self.angle_deg, origin_mm=self.origin_mm)
         """One cell of the ruling a step, the first step along the lines or dot rows."""
         self._gain = request.gain
+        self._edges: dict[float, float] = {}
 
     @abstractmethod
     def edges_per_mm(self, tones: FloatArray) -> FloatArray:
         """`edge_per_mm` for tones (n,), all between 0 and 1."""
 
     def edge_per_mm(self, tone: float) -> float:
-        """Length of inked edge for each mm2 of sheet (mm / mm2); none where nothing or everything is inked."""
-        return float(self.edges_per_mm(np.array([tone]))[0]) if 0.0 < tone < 1.0 else 0.0
+        """Length of inked edge for each mm2 of sheet (mm / mm2); 0 where nothing or everything is inked."""
+        if not 0.0 < tone < 1.0:
+            return 0.0
+        if tone not in self._edges:
+            self._edges[tone] = float(self.edges_per_mm(np.array([tone]))[0])
+        return self._edges[tone]
 
     @cached_property
     def _printed(self) -> PrintedTone:

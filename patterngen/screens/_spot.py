@@ -19,7 +19,7 @@ SpotFunction = Callable[[FloatArray, FloatArray], FloatArray]
 
 
 def _corner(x: FloatArray, y: FloatArray) -> FloatArray:
-    return (np.abs(x) - 1) ** 2 + (np.abs(y) - 1) ** 2 - 1
+    return np.asarray((np.abs(x) - 1) ** 2 + (np.abs(y) - 1) ** 2 - 1)
 
 
 def _round(x: FloatArray, y: FloatArray) -> FloatArray:
@@ -36,13 +36,11 @@ def _ellipse(x: FloatArray, y: FloatArray) -> FloatArray:
 
 def _diamond(x: FloatArray, y: FloatArray) -> FloatArray:
     x, y = np.abs(x), np.abs(y)
-    return np.where(
-        x + y <= 0.75, 1 - (x * x + y * y), np.where(x + y <= 1.23, 1 - (0.85 * x + y), _corner(x, y))
-    )
+    return np.where(x + y <= 0.75, 1 - (x * x + y * y), np.where(x + y <= 1.23, 1 - (0.85 * x + y), _corner(x, y)))
 
 
 def _sine(cycles: FloatArray) -> FloatArray:
-    return np.sin(2 * np.pi * cycles)
+    return np.asarray(np.sin(2 * np.pi * cycles))
 
 
 FUNCTIONS: dict[str, SpotFunction] = {

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,8 +15,11 @@ from patterngen.model.screen import ComplexArray, Screen
 from patterngen.model.shapes import Batch, Contour, Outline, Stamps
 from patterngen.screens import _quadrant as quadrant
 from patterngen.screens import _spot as spot
-from patterngen.screens._ground import Ground, Ranges, polygons, ring_polygons, whole_area
+from patterngen.screens._ground import Ground, polygons, ring_polygons, whole_area
 from patterngen.screens._ink import InkScreen
+from patterngen.screens._outlines import full_cell, of_levels
+from patterngen.screens._samples import PICTURE, on_panel
+from patterngen.screens._steps import ToneSteps
 
 SUMMARY = "dots on a square lattice, of any of the spot functions of ISO 32000-1; their size carries the tone"
 
@@ -26,8 +28,7 @@ AXIS_SHAPES = frozenset(name for name in SHAPES if spot.has_axis(name))
 """Shapes whose rows and columns differ, so that the screen repeats only after half a turn."""
 
 _BATCH = 200_000
-_SMALLEST_TONE = 1e-5
-"""Picture tones below this draw no dot (a disc a 280th of the pitch wide), above 1 less this the whole cell."""
+"""Places of a picture worked on at a time."""
 
 
 class Params(BaseModel):
@@ -53,8 +54,8 @@ class DotScreen(InkScreen):
     the middle of the spot function's cell (their far edge stays half a pitch beyond it).
 
     In a picture every dot has the tone of its centre, averaged over about a cell, in steps of at
-    most 1/512 and at most 1 um of a disc's diameter (small dots) or of a clear disc's (small holes).  Its cell then
-    holds exactly {value > s} for that tone; simpledot and the ellipses reach over their cell's
+    most 1/512 and at most 1 um of the diameter of a disc, inked or clear.  Its cell then holds
+    exactly {value > s} for that tone; simpledot and the ellipses reach over their cell's
     edge as whole figures.  `covers` follows this; the one thing that it leaves out is the
     tapering overlap of at most 0.03 of the pitch that keeps seams shut, which in even tone lies
     inside the neighbour's ink and in a picture can stick out of it where the neighbour is lighter.
@@ -63,6 +64,7 @@ class DotScreen(InkScreen):
     kind = "dots"
 
     def __init__(self, request: ScreenRequest) -> None:
+        """A request without a shape gets simpledot."""
         super().__init__(request)
         self.shape = request.shape or "simpledot"
         self._shape = quadrant.SHAPES[self.shape]
@@ -76,6 +78,7 @@ class DotScreen(InkScreen):
         """Where the dots stand; its cell is a dot's own (smaller than the ruling's where there are several)."""
         self._sides_mm = (self.pitch_mm / self._shape.copies[0], self.pitch_mm / self._shape.copies[1])
         self._steps = ToneSteps(pitch_um=1000.0 * min(self._sides_mm))
+        self._step_levels = np.full(self._steps.count + 1, np.nan)
 
     # --- what predicts
 
@@ -147,9 +150,9 @@ class DotScreen(InkScreen):
         return np.outer(0.5 * (1.0 - tones), self._shape.slides)
 
     def _levels(self, tones: FloatArray) -> FloatArray:
-        """Spot function levels of tones (n,), any from 0 to 1."""
+        """Spot function levels of tones (n,), any from 0 to 1.  A whole figure just fills its cell at 1."""
         full, empty = self._shape.levels
-        out = np.where(tones <= 0.0, empty + 1.0, full - 1.0)
+        out = np.where(tones <= 0.0, empty + 1.0, full if self._shape.whole else full - 1.0)
         between = (tones > 0.0) & (tones < 1.0)
         if between.any():
             out[between] = quadrant.levels_of(self._shape, tones[between])
@@ -162,6 +165,7 @@ class DotScreen(InkScreen):
         return spot.value(self.shape, at[:, 0], at[:, 1])
 
     def covers(self, x_mm: FloatArray, y_mm: FloatArray) -> BoolArray:
+        """Which points are inked: the spot function against its level, see the class."""
         x, y = np.broadcast_arrays(np.asarray(x_mm, dtype=float), np.asarray(y_mm, dtype=float))
         uv = self._dots.locate(np.stack([x.ravel(), y.ravel()], axis=1))
         if self.tone.constant is not None:
@@ -171,13 +175,15 @@ class DotScreen(InkScreen):
             inked = self._value(uv) > self._picture_levels(cell)
             if self._shape.whole is not None:
                 inked |= self._reached_from_beside(uv, cell)
-        return inked.reshape(x.shape) & self.area.contains(x, y)
+        return np.asarray(inked.reshape(x.shape) & self.area.contains(x, y))
 
     def _picture_levels(self, cell: FloatArray) -> FloatArray:
         """The level (n,) at which the dots of the cells (n, 2) are drawn."""
         steps = self._step_at(cell)
-        used, of = np.unique(steps, return_inverse=True)
-        return self._levels(self._steps.tones(used))[of]
+        new = np.unique(steps[np.isnan(self._step_levels[steps])])
+        if len(new):
+            self._step_levels[new] = self._levels(self._steps.tones(new))
+        return self._step_levels[steps]
 
     def _step_at(self, cell: FloatArray) -> NDArray[np.int32]:
         """The tone step (n,) of the dots at lattice places (n, 2)."""
@@ -194,8 +200,8 @@ class DotScreen(InkScreen):
                 if i or j:
                     beside = cell + np.array([i, j])
                     a, b = 2.0 * np.abs(uv - beside).T
-                    m = np.maximum(figure.m(self._picture_levels(beside)), 0.0)
-                    out |= figure.A * a * a + figure.B * b * b < m
+                    level = self._picture_levels(beside)
+                    out |= (figure.A * a * a + figure.B * b * b < figure.m(level)) & (level < self._shape.levels[1])
         return out
 
     # --- what is drawn
@@ -212,13 +218,14 @@ class DotScreen(InkScreen):
 
     def _outlines(self, tones: FloatArray) -> tuple[Outline, ...]:
         """Outlines at tones (n,) above 0."""
-        inner = tones < 1.0
-        contours = iter(quadrant.outlines(self._shape, self._levels(tones[inner])) if inner.any() else ())
+        inner = (tones < 1.0) | (self._shape.whole is not None)
+        even = self.tone.constant is not None
+        contours = iter(of_levels(self._shape, self._levels(tones[inner]), even=even) if inner.any() else ())
         slides = self._slide(tones)
         out = []
-        for tone, slide in zip(tones.tolist(), slides, strict=True):
-            if tone >= 1.0:
-                out.append(Outline((quadrant.full_cell(),), 1.0))
+        for tone, slide, drawn in zip(tones.tolist(), slides, inner.tolist(), strict=True):
+            if not drawn:
+                out.append(Outline((full_cell(),), 1.0))
                 continue
             contour = next(contours)
             if slide.any():
@@ -233,7 +240,11 @@ class DotScreen(InkScreen):
         return outline.contours[0].points(steps=max(steps, 4))
 
     def _rim(
-        self, ground: Ground, places: NDArray[np.int64], outlines: tuple[Outline, ...], variety: NDArray[np.int32]
+        self,
+        ground: Ground,
+        places: NDArray[np.int64],
+        outlines: tuple[Outline, ...],
+        variety: NDArray[np.int32],
     ) -> Iterator[Batch]:
         """Dots near the area's edge: whole ones as stamps, cut ones as polygons."""
         if not len(places):
@@ -279,42 +290,6 @@ class DotScreen(InkScreen):
         yield from self._rim(ground, places[steps > 0], outlines, variety)
 
 
-class ToneSteps:
-    """The tones that pictures are drawn in: numbered steps from 0 (nothing) to `count` (everything).
-
-    A step is at most 1/512, and for small dots at most 1 um of the diameter of a disc; holes the same.
-    """
-
-    def __init__(self, *, pitch_um: float) -> None:
-        self._um = 2.0 * pitch_um / np.sqrt(np.pi)  # diameter in um is this times sqrt(tone)
-        # below this tone a micrometre of diameter is the smaller step
-        self._turn = min((self._um / 1024.0) ** 2, 0.5)
-        self.half = int(np.ceil(self._measure(np.array(0.5))))
-        self._scale = self.half / float(self._measure(np.array(0.5)))
-        self.count = 2 * self.half
-
-    def _measure(self, tone: FloatArray) -> FloatArray:
-        small = np.minimum(tone, self._turn)
-        return np.asarray(self._um * np.sqrt(small) + 512.0 * (tone - small))
-
-    def nearest(self, tones: FloatArray) -> NDArray[np.int32]:
-        """The step (n,) nearest to each tone (n,)."""
-        dark = tones > 0.5
-        light = np.where(dark, 1.0 - tones, tones)
-        light[light < _SMALLEST_TONE] = 0.0
-        step = np.rint(self._scale * self._measure(light)).astype(np.int32)
-        return np.where(dark, self.count - step, step)
-
-    def tones(self, steps: NDArray[Any]) -> FloatArray:
-        """The tone (n,) of each step (n,)."""
-        steps = np.asarray(steps)
-        dark = steps > self.half
-        m = np.where(dark, self.count - steps, steps) / self._scale
-        turn = self._um * np.sqrt(self._turn)
-        light = np.where(m <= turn, (m / self._um) ** 2, self._turn + (m - turn) / 512.0)
-        return np.where(dark, 1.0 - light, light)
-
-
 class _Drawn:
     """The outlines of a picture's steps, each made when it is first met."""
 
@@ -355,13 +330,15 @@ def _stamps(
 ) -> Stamps:
     """Stamps at places (n, 2), which are sorted along rows: equal neighbours become one run."""
     new = np.ones(len(places), dtype=bool)
-    new[1:] = (
-        (places[1:, 1] != places[:-1, 1]) | (places[1:, 0] != places[:-1, 0] + 1) | (variety[1:] != variety[:-1])
-    )
+    new[1:] = (places[1:, 1] != places[:-1, 1]) | (places[1:, 0] != places[:-1, 0] + 1) | (variety[1:] != variety[:-1])
     start = np.nonzero(new)[0]
     count = np.diff(np.append(start, len(places)))
     return Stamps(
-        lattice, outlines, places[start].astype(np.int32), count.astype(np.int32), variety[start].astype(np.int32)
+        lattice,
+        outlines,
+        places[start].astype(np.int32),
+        count.astype(np.int32),
+        variety[start].astype(np.int32),
     )
 
 
@@ -372,3 +349,28 @@ _BESSEL = 0.8255
 def make(request: ScreenRequest) -> Screen:
     """The dot screen asked for."""
     return DotScreen(request)
+
+
+def examples() -> list[ScreenRequest]:
+    """Screens for the tests that every kind must pass."""
+    even = [
+        (shape, (0.0, 15.0, 45.0, 67.5)[n % 4], (0.08, 0.3, 0.52, 0.81, 0.93)[n % 5]) for n, shape in enumerate(SHAPES)
+    ]
+    even += [
+        ("simpledot", 15.0, 0.85),
+        ("round", 30.0, 0.45),
+        ("ellipse", 60.0, 0.45),
+        ("diamond", 75.0, 0.6),
+    ]
+    pictures = [
+        ("simpledot", 15.0),
+        ("round", 45.0),
+        ("ellipse", 60.0),
+        ("ellipseb", 0.0),
+        ("double", 15.0),
+        ("linex", 30.0),
+    ]
+    return [
+        on_panel("dots", shape, ruling_per_mm=3.0 + 0.5 * (n % 3), angle_deg=angle, tone=tone)
+        for n, (shape, angle, tone) in enumerate(even)
+    ] + [on_panel("dots", shape, ruling_per_mm=4.0, angle_deg=angle, tone=PICTURE) for shape, angle in pictures]

@@ -9,11 +9,13 @@ from pydantic import BaseModel, ConfigDict
 
 from patterngen.model.area import BoolArray
 from patterngen.model.job import ScreenRequest
-from patterngen.model.lattice import FloatArray, direction
+from patterngen.model.lattice import FloatArray, Lattice, direction
 from patterngen.model.screen import ComplexArray, Screen
 from patterngen.model.shapes import Batch
 from patterngen.screens._ground import Ground, polygons, whole_area
 from patterngen.screens._ink import InkScreen
+from patterngen.screens._ribbons import bands
+from patterngen.screens._samples import PICTURE, on_panel
 
 SUMMARY = "parallel lines; their width carries the tone"
 
@@ -37,6 +39,7 @@ class LineScreen(InkScreen):
     symmetry_deg = 180.0
 
     def __init__(self, request: ScreenRequest) -> None:
+        """Lines have no shape to choose."""
         super().__init__(request)
         self.frequencies_per_mm = (self.ruling_per_mm * direction(self.angle_deg + 90.0))[None, :]
 
@@ -70,6 +73,7 @@ class LineScreen(InkScreen):
     # --- geometry
 
     def covers(self, x_mm: FloatArray, y_mm: FloatArray) -> BoolArray:
+        """Which points lie within half a line's width of its middle, see the class."""
         x, y = np.broadcast_arrays(np.asarray(x_mm, dtype=float), np.asarray(y_mm, dtype=float))
         uv = self.frame.locate(np.stack([x.ravel(), y.ravel()], axis=1))
         u, v = uv[:, 0], uv[:, 1]
@@ -86,8 +90,9 @@ class LineScreen(InkScreen):
     def _widths(self, sample: FloatArray, line: FloatArray) -> FloatArray:
         """Width in pitches at sample numbers (half pitches along the line) of lines."""
         xy = self.frame.place(np.stack([0.5 * sample, line], axis=-1).reshape(-1, 2))
-        width = np.clip(self.tone.at(xy[:, 0], xy[:, 1], size_mm=self.pitch_mm), 0.0, 1.0)
-        return np.where(width < _THINNEST, 0.0, width).reshape(np.shape(sample))
+        width = self.tone.at(xy[:, 0], xy[:, 1], size_mm=self.pitch_mm)
+        width = np.where(width < _THINNEST, 0.0, np.where(width > 1.0 - _THINNEST, 1.0, width))
+        return width.reshape(np.shape(sample))
 
     def shapes(self) -> Iterator[Batch]:
         """Polygons in the frame of the lines (u along, v across, in pitches), cut exactly by the area."""
@@ -109,13 +114,45 @@ class LineScreen(InkScreen):
         yield polygons(pieces, self.frame)
 
     def _ribbons(self) -> Iterator[Batch]:
-        raise NotImplementedError
+        """Lines of changing width: long ribbons inside the area, and cut ones along its edge.
+
+        A cut ribbon goes on for half a pitch under the whole one beside it, so that no seam shows.
+        """
+        # a place of this lattice is half a pitch of one line, seen from its middle
+        halves = Lattice(self.frame.place(np.array([[0.25, 0.0]]))[0], np.array([[0.5], [1.0]]) * self.frame.steps_mm)
+        inside, rim = Ground(self.area, halves).places(0.7072)
+        ground = Ground(self.area, self.frame)
+        for band in bands(inside, rim):
+            widths = self._widths(*band.stations())
+            lone, shared = band.ribbons(widths)
+            if len(lone):
+                yield lone.polygons(self.frame)
+            whole, pieces, _ = ground.cut(shared.geometries())
+            if whole.any():
+                yield shared.take(whole).polygons(self.frame)
+            cut = polygons(pieces, self.frame)
+            if cut.total:
+                yield cut
 
 
-_THINNEST = 1e-4
-"""Widths below this share of the pitch are not drawn."""
+_THINNEST = 5e-4
+"""In a picture, lines thinner than this share of the pitch are not drawn, and gaps thinner are closed."""
 
 
 def make(request: ScreenRequest) -> Screen:
     """The line screen asked for."""
     return LineScreen(request)
+
+
+def examples() -> list[ScreenRequest]:
+    """Screens for the tests that every kind must pass."""
+    return [
+        on_panel("lines", None, ruling_per_mm=ruling, angle_deg=angle, tone=tone)
+        for ruling, angle, tone in (
+            (4.0, 0.0, 0.3),
+            (5.0, 15.0, 0.5),
+            (3.7, 67.5, 0.85),
+            (6.0, 15.0, PICTURE),
+            (5.0, 105.0, PICTURE),
+        )
+    ]
