@@ -13,9 +13,7 @@ from dataclasses import dataclass
 _NUMBER = re.compile(r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d{1,3})?", re.ASCII)
 _COMMA = re.compile(r"([+-]?\d+),(\d+)(?=[\s%/a-zA-Z]|$)", re.ASCII)
 _SMALLEST, _LARGEST = 1e-12, 1e12
-_LOOKALIKES = str.maketrans(
-    {"\u2212": "-", "\u2013": "-", "\u00b5": "u", "\u03bc": "u", "\u00a0": " ", "\u202f": " "}
-)
+_LOOKALIKES = str.maketrans({"\u2212": "-", "\u2013": "-", "\u00b5": "u", "\u03bc": "u", "\u00a0": " ", "\u202f": " "})
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,9 +30,7 @@ class Quantity:
         return self.example.split()[-1]
 
 
-LENGTH = Quantity(
-    "a length", {"mm": 1.0, "um": 1e-3, "cm": 10.0, "m": 1000.0, "in": 25.4, "pt": 25.4 / 72}, "0.2 mm"
-)
+LENGTH = Quantity("a length", {"mm": 1.0, "um": 1e-3, "cm": 10.0, "m": 1000.0, "in": 25.4, "pt": 25.4 / 72}, "0.2 mm")
 RULING = Quantity("a ruling", {"lpi": 1 / 25.4, "/cm": 0.1, "/mm": 1.0, "/in": 1 / 25.4}, "150 lpi")
 RESOLUTION = Quantity("a resolution", {"dpi": 1 / 25.4, "/cm": 0.1, "/mm": 1.0, "/in": 1 / 25.4}, "2400 dpi")
 ANGLE = Quantity("an angle", {"deg": 1.0}, "15 deg")
@@ -118,9 +114,9 @@ def _without_unit(number: float, quantity: Quantity, allowed: str) -> QuantityEr
     # a bare 0.5 where a share is wanted surely means one half
     share = quantity is SHARE and 0 < abs(number) <= 1
     meant = number / quantity.units["%"] if share else number
-    return QuantityError(
-        "a number without its unit", allowed=allowed, nearest=f'"{plain(meant)} {quantity.unit}"'
-    )
+    sound = meant == 0 or _SMALLEST <= abs(meant) <= _LARGEST
+    nearest = f'"{plain(meant)} {quantity.unit}"' if sound else ""
+    return QuantityError("a number without its unit", allowed=allowed, nearest=nearest)
 
 
 def _mendable(text: str, quantity: Quantity, allowed: str) -> QuantityError:

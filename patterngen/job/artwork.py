@@ -114,9 +114,7 @@ def _tasks(reading: TableReading, sheet: SheetSize) -> list[tuple[str, tuple[str
         }
         out.append((f"{reading.path}.area.svg", ("outlines", area.svg, area.id or ""), head))
     if isinstance(tone, ImageTone):
-        out.append(
-            (f"{reading.path}.tone.image", ("picture", tone.image), {"kind": "picture", "label": tone.image})
-        )
+        out.append((f"{reading.path}.tone.image", ("picture", tone.image), {"kind": "picture", "label": tone.image}))
     return out
 
 
@@ -156,9 +154,7 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
         full, most_bytes=most, what="the drawing" if outlines else "the picture", where=where, key=key
     )
     if outlines and data.startswith(b"\x1f\x8b"):
-        raise InputError(
-            Fault(where, key, "the drawing is packed (svgz)", shown(text), "plain SVG: unpack it first")
-        )
+        raise InputError(Fault(where, key, "the drawing is packed (svgz)", shown(text), "plain SVG: unpack it first"))
     if outlines and (
         data.startswith((b"\x89PNG", b"\xff\xd8\xff", b"II", b"MM", b"%PDF", b"GIF8")) or not data.strip()
     ):
@@ -174,9 +170,7 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
     return data
 
 
-def _ask(
-    tasks: Mapping[tuple[str, ...], _Task], where: str
-) -> tuple[dict[tuple[str, ...], _Answer], list[Fault]]:
+def _ask(tasks: Mapping[tuple[str, ...], _Task], where: str) -> tuple[dict[tuple[str, ...], _Answer], list[Fault]]:
     """Hand the tasks to a child; where one kills it, name that one and go on with the rest."""
     answers: dict[tuple[str, ...], _Answer] = {}
     faults: list[Fault] = []
@@ -192,9 +186,7 @@ def _ask(
         if death and left:
             task_key, task = next(iter(left.items()))
             del left[task_key]
-            faults.append(
-                Fault(where, task.key, f"the file {death}", shown(task.label), allowed="a simpler file")
-            )
+            faults.append(Fault(where, task.key, f"the file {death}", shown(task.label), allowed="a simpler file"))
     return answers, faults
 
 
@@ -218,9 +210,7 @@ def _one_child(tasks: Sequence[_Task]) -> tuple[list[_Answer], str]:
         "OMP_NUM_THREADS": "1",
     }
     command = [sys.executable, "-P", "-m", "patterngen.job.artist"]
-    request = (
-        json.dumps([task.head for task in tasks]).encode() + b"\n" + b"".join(task.data for task in tasks)
-    )
+    request = json.dumps([task.head for task in tasks]).encode() + b"\n" + b"".join(task.data for task in tasks)
     try:
         done = subprocess.run(
             command, input=request, capture_output=True, timeout=WALL_SECONDS, env=environment, check=False
@@ -228,9 +218,7 @@ def _one_child(tasks: Sequence[_Task]) -> tuple[list[_Answer], str]:
     except subprocess.TimeoutExpired as error:
         return _answers(error.stdout or b""), f"took longer than {WALL_SECONDS} s to read"
     except OSError as error:
-        raise MachineError(
-            f"the reader of artwork could not be started ({error.strerror or error})"
-        ) from error
+        raise MachineError(f"the reader of artwork could not be started ({error.strerror or error})") from error
     answers = _answers(done.stdout)
     if done.returncode == 0 and len(answers) == len(tasks):
         return answers, ""
@@ -241,9 +229,7 @@ def _one_child(tasks: Sequence[_Task]) -> tuple[list[_Answer], str]:
     if done.returncode == -signal.SIGKILL:
         raise MachineError("the reader of artwork was killed from outside, perhaps for lack of memory")
     lines = done.stderr.decode("utf-8", "replace").strip().splitlines()
-    raise MachineError(
-        f"the reader of artwork ended with code {done.returncode}: {lines[-1] if lines else 'no word'}"
-    )
+    raise MachineError(f"the reader of artwork ended with code {done.returncode}: {lines[-1] if lines else 'no word'}")
 
 
 def _answers(output: bytes) -> list[_Answer]:

@@ -49,9 +49,7 @@ def too_much(job: Job, *, where: str) -> list[Fault]:
 
     Screens whose ruling is still open are left out: call it again when it is derived.
     """
-    counts = {
-        screen.name: estimated_shapes(job, screen.name) for screen in job.screens if screen.ruling_per_mm
-    }
+    counts = {screen.name: estimated_shapes(job, screen.name) for screen in job.screens if screen.ruling_per_mm}
     total = sum(counts.values())
     if total <= MOST_SHAPES:
         return []
@@ -126,18 +124,14 @@ def _sheet(tables: Readings, where: str) -> Iterator[Fault]:
                 "the page is larger than print files can hold",
                 f"{plain(longest)} mm with bleed",
                 allowed=f"at most {plain(LARGEST_PAGE_MM)} mm (14400 pt), bleed included",
-                nearest=f'"{plain(math.floor(LARGEST_PAGE_MM - 2 * bleed))} mm"'
-                if bleed < LARGEST_PAGE_MM / 2
-                else "",
+                nearest=f'"{plain(math.floor(LARGEST_PAGE_MM - 2 * bleed))} mm"' if bleed < LARGEST_PAGE_MM / 2 else "",
             )
 
 
 def _gains(tables: Readings, where: str) -> Iterator[Fault]:
     for reading in (*tables["press"], *tables["screen"]):
         if reading.get("gain") is not None and reading.get("edge_gain") is not None:
-            yield Fault(
-                where, f"{reading.path}.edge_gain", "two gains at once", allowed="either gain or edge_gain"
-            )
+            yield Fault(where, f"{reading.path}.edge_gain", "two gains at once", allowed="either gain or edge_gain")
 
 
 def _ink_names(tables: Readings, where: str) -> Iterator[Fault]:
@@ -164,11 +158,7 @@ def _ink_names(tables: Readings, where: str) -> Iterator[Fault]:
                 allowed="at most 120 bytes in UTF-8",
             )
         if key in seen:
-            how = (
-                "stands here twice"
-                if seen[key] == name
-                else f"differs from {shown(seen[key])} by case or form only"
-            )
+            how = "stands here twice" if seen[key] == name else f"differs from {shown(seen[key])} by case or form only"
             yield Fault(
                 where,
                 f"{reading.path}.name",
@@ -205,9 +195,7 @@ def _inks_used(tables: Readings, where: str) -> Iterator[Fault]:
         return  # an ink whose name is faulty may be the one that is meant
     known = [str(name) for name in names]
     places = [(f"{r.path}.ink", r.get("ink")) for r in tables["screen"]]
-    places += [
-        (f"{r.path}.inks[{i}]", ink) for r in tables["overprint"] for i, ink in enumerate(r.get("inks") or ())
-    ]
+    places += [(f"{r.path}.inks[{i}]", ink) for r in tables["overprint"] for i, ink in enumerate(r.get("inks") or ())]
     for key, ink in places:
         if ink is not None and ink not in known:
             near = nearest(ink, known)
@@ -244,9 +232,7 @@ def _overprints(tables: Readings, where: str) -> Iterator[Fault]:
                     allowed="each set of inks once",
                 )
             seen.setdefault(group, reading.path)
-        if any(
-            fault.key.startswith((f"{reading.path}.lab", f"{reading.path}.never")) for fault in reading.faults
-        ):
+        if any(fault.key.startswith((f"{reading.path}.lab", f"{reading.path}.never")) for fault in reading.faults):
             continue
         if reading.get("never") and reading.get("lab") is not None:
             yield Fault(

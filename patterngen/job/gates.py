@@ -51,11 +51,7 @@ def decode(data: bytes, *, where: str) -> tuple[str, list[str]]:
     except UnicodeDecodeError as error:
         line = data.count(b"\n", 0, error.start) + 1
         zeros = data[:4096].count(0)
-        guess = (
-            "UTF-16 without its mark, or binary data"
-            if zeros
-            else "Latin-1 or Windows-1252, by the look of it"
-        )
+        guess = "UTF-16 without its mark, or binary data" if zeros else "Latin-1 or Windows-1252, by the look of it"
         raise InputError(
             Fault(
                 where,
@@ -68,9 +64,7 @@ def decode(data: bytes, *, where: str) -> tuple[str, list[str]]:
     if "\0" in text:
         line = text.count("\n", 0, text.index("\0")) + 1
         guess = "UTF-16" if data[:4096].count(0) > len(data[:4096]) // 4 else "binary data"
-        raise InputError(
-            Fault(where, "", f"line {line}: the file holds zero bytes ({guess})", allowed="UTF-8 text")
-        )
+        raise InputError(Fault(where, "", f"line {line}: the file holds zero bytes ({guess})", allowed="UTF-8 text"))
     if "\r" in text:
         text = text.replace("\r\n", "\n")
         if "\r" in text:
@@ -130,9 +124,7 @@ def bad_values(data: object, *, where: str, key: str = "", depth: int = 0) -> It
             if not isinstance(name, str):
                 yield Fault(where, key, "a key that is not a text", value=repr(name)[:60])
             else:
-                yield from bad_values(
-                    value, where=where, key=f"{key}.{name}" if key else name, depth=depth + 1
-                )
+                yield from bad_values(value, where=where, key=f"{key}.{name}" if key else name, depth=depth + 1)
     elif isinstance(data, list | tuple):
         for index, value in enumerate(data):
             yield from bad_values(value, where=where, key=f"{key}[{index}]", depth=depth + 1)

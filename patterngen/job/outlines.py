@@ -94,7 +94,10 @@ def read(
     root = _parse(data)
     drawing = _Drawing(root, label)
     page = _page_matrix(root)
-    geometry = shapely.union_all(list(drawing.filled(page, element)))
+    try:
+        geometry = shapely.union_all(list(drawing.filled(page, element)))
+    except RecursionError:
+        raise OutlineError("uses and groups are nested too deep", allowed="plainer drawings") from None
     # turn y up; that turns the rings round too, which `orient` below sets right
     flipped = shapely.transform(geometry, lambda xy: np.column_stack([xy[:, 0], sheet_height_mm - xy[:, 1]]))
     if flipped.area < _SMALLEST_MM2:
@@ -109,8 +112,7 @@ def read(
         )
     if cut.area < flipped.area * (1 - 1e-9):
         drawing.remarks.append(
-            f"{label}: reaches beyond the sheet and was cut there, "
-            f"from {flipped.area:.6g} mm2 to {cut.area:.6g} mm2"
+            f"{label}: reaches beyond the sheet and was cut there, from {flipped.area:.6g} mm2 to {cut.area:.6g} mm2"
         )
     return Outlines(list(_rings(cut)), drawing.summary())
 
@@ -166,9 +168,7 @@ def _parse(data: bytes) -> ET.Element:
         raise OutlineError("it has entities of its own", allowed="plain SVG") from None
     except ET.ParseError as error:
         line, column = error.position
-        raise OutlineError(
-            f"it is not well-formed XML (line {line}, column {column + 1})", allowed="SVG"
-        ) from None
+        raise OutlineError(f"it is not well-formed XML (line {line}, column {column + 1})", allowed="SVG") from None
     except (LookupError, ValueError) as error:
         if isinstance(error, OutlineError):
             raise
@@ -227,9 +227,7 @@ def _page_length(text: str | None, name: str) -> float:
         raise OutlineError(f"its page's {name} is no real size", value=_clip(text), allowed=allowed)
     length = float(match[1]) * factor
     if not 0 < length <= 100_000:
-        raise OutlineError(
-            f"its page's {name} is out of range", value=_clip(text), allowed=f"{allowed}, above zero"
-        )
+        raise OutlineError(f"its page's {name} is out of range", value=_clip(text), allowed=f"{allowed}, above zero")
     return length
 
 
@@ -249,7 +247,6 @@ class _Drawing:
 
     def __post_init__(self) -> None:
         self._left_out: dict[str, int] = {}
-        self._visited = 0
         self._points = 0
         self._open = self._flat = 0
         self._by_id: dict[str, ET.Element] = {}
@@ -272,9 +269,7 @@ class _Drawing:
         """Remarks, what was left out and mended among them."""
         out = list(self.remarks)
         if self._left_out:
-            words = ", ".join(
-                f"{what} ({n})" if n > 1 else what for what, n in sorted(self._left_out.items())
-            )
+            words = ", ".join(f"{what} ({n})" if n > 1 else what for what, n in sorted(self._left_out.items()))
             out.append(f"{self.label}: left out, as it holds no outline: {words}")
         if self._open:
             out.append(
@@ -282,22 +277,20 @@ class _Drawing:
                 " closed by a straight line"
             )
         if self._flat:
-            out.append(
-                f"{self.label}: {self._flat} outline{'s' if self._flat > 1 else ''} without area left out"
-            )
+            out.append(f"{self.label}: {self._flat} outline{'s' if self._flat > 1 else ''} without area left out")
         return out
 
     def filled(self, page: FloatArray, identity: str | None) -> Iterator[BaseGeometry]:
         """Filled geometry in mm, y down, of the whole drawing or of one element."""
         if identity is None:
+            if self._spelt_out(self.root, {}) > MOST_ELEMENTS:
+                raise _too_many_uses()
             style = self._inherit(self.root, _Style())
             for child in self.root:
                 yield from self._walk(child, page, style, ())
             return
         if identity in self._twice:
-            raise OutlineError(
-                "more than one element has this id", value=_clip(identity), allowed="an id of its own"
-            )
+            raise OutlineError("more than one element has this id", value=_clip(identity), allowed="an id of its own")
         element = self._by_id.get(identity)
         if element is None:
             close = get_close_matches(identity, self._by_id, n=1, cutoff=0.3)
@@ -307,6 +300,8 @@ class _Drawing:
                 allowed=_clip(", ".join(self._by_id) or "the drawing has no ids"),
                 nearest=close[0] if close else "",
             )
+        if self._spelt_out(element, {}) > MOST_ELEMENTS:
+            raise _too_many_uses()
         chain = [element]
         while chain[-1] in self._parents:
             chain.append(self._parents[chain[-1]])
@@ -315,9 +310,7 @@ class _Drawing:
             style = self._inherit(ancestor, style)
             if ancestor is not self.root:
                 if _short(ancestor.tag) == "svg":
-                    raise self._error(
-                        ancestor, "is a page within the page", allowed="one page; flatten it first"
-                    )
+                    raise self._error(ancestor, "is a page within the page", allowed="one page; flatten it first")
                 matrix = matrix @ self._transform(ancestor)
         if element is self.root:
             yield from self.filled(page, None)
@@ -326,18 +319,23 @@ class _Drawing:
         else:
             yield from self._walk(element, matrix, style, ())
 
+    def _spelt_out(self, element: ET.Element, known: dict[ET.Element, int]) -> int:
+        """How many elements there are with every use spelt out; a circle counts once, as drawing refuses it."""
+        if element not in known:
+            known[element] = 0
+            parts = list(element)
+            if _short(element.tag) == "use":
+                target = next((element.get(name) for name in _HREF if element.get(name)), None) or ""
+                parts += [self._by_id[target[1:]]] if target[1:] in self._by_id else []
+            known[element] = 1 + sum(self._spelt_out(part, known) for part in parts)
+        return known[element]
+
     def _walk(
         self, element: ET.Element, matrix: FloatArray, style: _Style, used: tuple[str, ...]
     ) -> Iterator[BaseGeometry]:
         if not isinstance(element.tag, str) or not element.tag.startswith(_SVG):
             return  # another program's own notes
         tag = _short(element.tag)
-        self._visited += 1
-        if self._visited > MOST_ELEMENTS:
-            raise OutlineError(
-                "its uses of uses grow too many",
-                allowed=f"at most {MOST_ELEMENTS} elements when all are spelt out",
-            )
         if tag in _UNDRAWN:
             return
         if tag == "svg":
@@ -397,9 +395,7 @@ class _Drawing:
         else:
             yield from self._walk(found, matrix @ shift, style, (*used, identity))
 
-    def _shape(
-        self, element: ET.Element, tag: str, matrix: FloatArray, style: _Style
-    ) -> Iterator[BaseGeometry]:
+    def _shape(self, element: ET.Element, tag: str, matrix: FloatArray, style: _Style) -> Iterator[BaseGeometry]:
         rings: list[FloatArray] = []
         for ring, closed in self._subpaths(element, tag, matrix):
             self._points += len(ring)
@@ -427,9 +423,7 @@ class _Drawing:
             return
         yield geometry
 
-    def _subpaths(
-        self, element: ET.Element, tag: str, matrix: FloatArray
-    ) -> Iterator[tuple[FloatArray, bool]]:
+    def _subpaths(self, element: ET.Element, tag: str, matrix: FloatArray) -> Iterator[tuple[FloatArray, bool]]:
         """(points in mm, whether closed by the drawing itself) of every subpath of a shape."""
         if tag == "path":
             try:
@@ -508,9 +502,7 @@ class _Drawing:
             return np.eye(3)
         matrix = np.eye(3)
         at, count = 0, 0
-        pattern = re.compile(
-            r"[\s,]*(matrix|translate|scale|rotate|skewX|skewY)\s*\(([^()]*)\)[\s,]*", re.ASCII
-        )
+        pattern = re.compile(r"[\s,]*(matrix|translate|scale|rotate|skewX|skewY)\s*\(([^()]*)\)[\s,]*", re.ASCII)
         while at < len(text):
             match = pattern.match(text, at)
             numbers = _all_numbers(match[2], None) if match else None
@@ -527,9 +519,7 @@ class _Drawing:
             at = match.end()
         size = float(np.abs(matrix).max())
         if not math.isfinite(size) or size > _LARGEST or abs(np.linalg.det(matrix[:2, :2])) < 1e-12:
-            raise self._error(
-                element, "has a transform that flattens or blows up its content", value=_clip(text)
-            )
+            raise self._error(element, "has a transform that flattens or blows up its content", value=_clip(text))
         return matrix
 
     def _refuse_cut(self, element: ET.Element) -> None:
@@ -599,9 +589,7 @@ class _Drawing:
         same = list(self.root.iter(element.tag))
         return f"<{tag}> number {same.index(element) + 1}"
 
-    def _error(
-        self, element: ET.Element, problem: str, *, value: str = "", allowed: str = ""
-    ) -> OutlineError:
+    def _error(self, element: ET.Element, problem: str, *, value: str = "", allowed: str = "") -> OutlineError:
         return OutlineError(f"{self._name(element)} {problem}", value=value, allowed=allowed)
 
 
@@ -770,10 +758,7 @@ def _chords(cubic: FloatArray) -> FloatArray:
     count = min(max(1, math.ceil(math.sqrt(bend / (8 * CHORD_ERROR_MM)))), MOST_POINTS)
     u = np.arange(1, count + 1)[:, None] / count
     return np.asarray(
-        (1 - u) ** 3 * cubic[0]
-        + 3 * (1 - u) ** 2 * u * cubic[1]
-        + 3 * (1 - u) * u**2 * cubic[2]
-        + u**3 * cubic[3]
+        (1 - u) ** 3 * cubic[0] + 3 * (1 - u) ** 2 * u * cubic[1] + 3 * (1 - u) * u**2 * cubic[2] + u**3 * cubic[3]
     )
 
 
@@ -868,6 +853,12 @@ def _all_numbers(text: str, count: int | None) -> list[float] | None:
 def _declarations(text: str) -> Mapping[str, str]:
     pairs = (part.split(":", 1) for part in text.split(";") if ":" in part)
     return {name.strip().lower(): value.replace("!important", "").strip() for name, value in pairs}
+
+
+def _too_many_uses() -> OutlineError:
+    return OutlineError(
+        "its uses of uses grow too many", allowed=f"at most {MOST_ELEMENTS} elements when all are spelt out"
+    )
 
 
 def _too_many_points() -> OutlineError:

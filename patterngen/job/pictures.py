@@ -107,9 +107,7 @@ def _kind(data: bytes) -> str:
             raise PictureError(f"is {words}, by its content")
     head = data[:512].lstrip(b"\xef\xbb\xbf \t\r\n").lower()
     if head.startswith((b"<svg", b"<?xml", b"<!doctype")):
-        raise PictureError(
-            "is an SVG drawing, by its content", allowed=f"{_ALLOWED}; a drawing may be an area"
-        )
+        raise PictureError("is an SVG drawing, by its content", allowed=f"{_ALLOWED}; a drawing may be an area")
     raise PictureError("is no picture, by its content" if data else "is empty")
 
 

@@ -10,6 +10,7 @@ from pydantic import BaseModel, ConfigDict, Discriminator, Field, GetCoreSchemaH
 from pydantic_core import CoreSchema, core_schema
 
 from patterngen import registry
+from patterngen.job.tables import FORM_TAGS
 from patterngen.model.fields import (
     Angle,
     AngleError,
@@ -73,9 +74,7 @@ ArtPath = Annotated[str, TextField("a path relative to the preset's folder", 200
 # an imager's or scanner's pixels are counted in dpi, a mesh in threads to the cm
 GridRuling = Annotated[
     float,
-    QuantityField(
-        Quantity("a ruling", RULING.units | RESOLUTION.units, "120 /cm"), low=0.0, high=10_000.0, above=True
-    ),
+    QuantityField(Quantity("a ruling", RULING.units | RESOLUTION.units, "120 /cm"), low=0.0, high=10_000.0, above=True),
 ]
 InkName = Annotated[str, TextField("the name of an ink", 60)]
 
@@ -95,16 +94,10 @@ class ViewingTable(Table):
     far: PositiveLength | None = Field(
         None, description="where the print must look even; default twice the reading distance"
     )
-    limit: Annotated[
-        float, NumberField("limit of visibility for periods up to 1 mm", 0.0, 1000.0, above=True)
-    ] = 4.0
-    limit_coarse: Annotated[
-        float, NumberField("limit of visibility for longer periods", 0.0, 1000.0, above=True)
-    ] = 1.0
+    limit: Annotated[float, NumberField("limit of visibility for periods up to 1 mm", 0.0, 1000.0, above=True)] = 4.0
+    limit_coarse: Annotated[float, NumberField("limit of visibility for longer periods", 0.0, 1000.0, above=True)] = 1.0
     light: Illuminance = Field(500.0, description="light on the print")
-    eye: Annotated[str, ChoiceField("an eye model", lambda: registry.names("patterngen.vision"))] = (
-        "barten1999"
-    )
+    eye: Annotated[str, ChoiceField("an eye model", lambda: registry.names("patterngen.vision"))] = "barten1999"
 
 
 class GainTable(Table):
@@ -168,14 +161,15 @@ class SvgArea(Table):
 
 
 def _by_shape(value: object) -> str:
-    return "<table>" if isinstance(value, dict) else "<value>"
+    return FORM_TAGS[isinstance(value, dict)]
 
 
 Tone = Annotated[
-    Annotated[Share, Tag("<value>")] | Annotated[ImageTone, Tag("<table>")], Discriminator(_by_shape)
+    Annotated[Share, Tag(FORM_TAGS[0])] | Annotated[ImageTone, Tag(FORM_TAGS[1])], Discriminator(_by_shape)
 ]
 AreaField = Annotated[
-    Annotated[Literal["sheet"], Tag("<value>")] | Annotated[SvgArea, Tag("<table>")], Discriminator(_by_shape)
+    Annotated[Literal["sheet"], Tag(FORM_TAGS[0])] | Annotated[SvgArea, Tag(FORM_TAGS[1])],
+    Discriminator(_by_shape),
 ]
 
 
@@ -191,9 +185,7 @@ class ScreenTable(GainTable):
     )
     tone: Tone
     area: AreaField = "sheet"
-    origin: Point = Field(
-        (0.0, 0.0), description="where a dot or line centre lies, from the trim's lower left corner"
-    )
+    origin: Point = Field((0.0, 0.0), description="where a dot or line centre lies, from the trim's lower left corner")
 
 
 class GridTable(Table):

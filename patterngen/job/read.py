@@ -48,9 +48,7 @@ def load(path_or_dict: str | os.PathLike[str] | Mapping[str, Any], overrides: It
     elif isinstance(path_or_dict, str | os.PathLike):
         source = _Source.from_file(Path(path_or_dict))
     else:
-        raise InputError(
-            Fault("preset", "", "neither the path of a preset nor a dict", allowed="a path or a dict")
-        )
+        raise InputError(Fault("preset", "", "neither the path of a preset nor a dict", allowed="a path or a dict"))
     return _read(source, tuple(overrides))
 
 
@@ -242,9 +240,7 @@ class _Readings:
             else:
                 self._read_one(name, table, path, where, faults)
 
-    def _read_one(
-        self, name: str, raw: Mapping[str, Any], path: str, where: str, faults: list[Fault]
-    ) -> None:
+    def _read_one(self, name: str, raw: Mapping[str, Any], path: str, where: str, faults: list[Fault]) -> None:
         kind = TABLES[name]
         models = kind.models(name)
         known = raw.get("kind") if kind.family else ""
@@ -261,9 +257,7 @@ class _Readings:
 
 
 def _needed() -> str:
-    tables = [
-        f"[[{name}]]" if kind.many else f"[{name}] with size" for name, kind in TABLES.items() if kind.needed
-    ]
+    tables = [f"[[{name}]]" if kind.many else f"[{name}] with size" for name, kind in TABLES.items() if kind.needed]
     return f"patterngen = {VERSION}, title, {', '.join(tables)}"
 
 
@@ -397,9 +391,7 @@ def _press(reading: TableReading, set_paths: set[str]) -> tuple[Press, dict[str,
     limits = _limits.limits(process)
     for name in _limits.quantities():
         if (value := reading[name]) is not None:
-            limits[name] = _limits.own_limit(
-                name, value, origin=SET if f"press.{name}" in set_paths else "preset"
-            )
+            limits[name] = _limits.own_limit(name, value, origin=SET if f"press.{name}" in set_paths else "preset")
     press = Press(
         process=process,
         imager_per_mm=reading["imager"],
@@ -421,9 +413,7 @@ def _turned(angle_deg: float, path: str, remarks: list[str]) -> float:
     return angle_deg % 360.0
 
 
-def _screen(
-    reading: TableReading, press: Press, sheet: SheetSize, art: Any, remarks: list[str]
-) -> ScreenRequest:
+def _screen(reading: TableReading, press: Press, sheet: SheetSize, art: Any, remarks: list[str]) -> ScreenRequest:
     ruling, angle = reading["ruling"], reading["angle"]
     chosen = tuple(key for key, value in (("ruling", ruling), ("angle", angle)) if value == CHOOSE)
     own = {k: v for k, v in reading.values.items() if k not in check.COMMON_SCREEN_KEYS and k != "shape"}
@@ -441,9 +431,7 @@ def _screen(
         kind=reading["kind"],
         shape=reading.get("shape"),
         ruling_per_mm=None if ruling == CHOOSE else ruling,
-        angle_deg=None
-        if angle is None or angle == CHOOSE
-        else _turned(angle, f"{reading.path}.angle", remarks),
+        angle_deg=None if angle is None or angle == CHOOSE else _turned(angle, f"{reading.path}.angle", remarks),
         tone=tone,
         area=area,
         origin_mm=reading["origin"],

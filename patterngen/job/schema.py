@@ -33,12 +33,7 @@ def schema() -> dict[str, Any]:
 
 def _models(model: type[BaseModel]) -> list[type[BaseModel]]:
     """A model and all those in it."""
-    inner = [
-        m
-        for info in model.model_fields.values()
-        for part in models_in(info.annotation)
-        for m in _models(part)
-    ]
+    inner = [m for info in model.model_fields.values() for part in models_in(info.annotation) for m in _models(part)]
     return [model, *inner]
 
 
@@ -71,9 +66,7 @@ def _without_noise(part: Any, *, names: bool = False) -> Any:
             continue
         # an example or a constant is data, not a schema
         keep = not names and key in ("examples", "enum", "const", "default")
-        out[key] = (
-            value if keep else _without_noise(value, names=not names and key in ("properties", "$defs"))
-        )
+        out[key] = value if keep else _without_noise(value, names=not names and key in ("properties", "$defs"))
     branches = out.get("anyOf")
     if not names and isinstance(branches, list):
         real = [b for b in branches if b != {"type": "null"}]

@@ -13,6 +13,8 @@ from pydantic_core import ErrorDetails
 from patterngen.errors import Fault
 
 _LONGEST_SHOWN = 60
+FORM_TAGS = ("<value>", "<table>")
+"""Names of the two forms that a value may have: plain, or a table of its own."""
 
 
 @dataclass(frozen=True)
@@ -71,11 +73,7 @@ def _sound_values(model: type[BaseModel], raw: Mapping[str, Any], keys: Mapping[
 def shown(value: object) -> str:
     """A value as the preset would write it, shortened."""
     if isinstance(value, str):
-        text = (
-            '"'
-            + "".join(c if c.isprintable() else f"\\u{ord(c):04X}" for c in value[: 2 * _LONGEST_SHOWN])
-            + '"'
-        )
+        text = '"' + "".join(c if c.isprintable() else f"\\u{ord(c):04X}" for c in value[: 2 * _LONGEST_SHOWN]) + '"'
     elif isinstance(value, bool):
         text = "true" if value else "false"
     elif isinstance(value, list | tuple):
@@ -97,19 +95,19 @@ def nearest(word: str, words: Iterable[str]) -> str:
 
 
 def _fault(detail: ErrorDetails, model: type[BaseModel], path: str, where: str) -> Fault:
-    # tags of a choice between forms ("<table>") are no part of the preset's own path
-    place = [part for part in detail["loc"] if not (isinstance(part, str) and part.startswith("<"))]
+    # the tags of a choice between forms are no part of the preset's own path
+    loc, kind = list(detail["loc"]), detail["type"]
+    last = [loc.pop()] if kind == "extra_forbidden" else []  # the user's own word, whatever it looks like
+    place = [part for part in loc if part not in FORM_TAGS] + last
     key = path + "".join(f"[{part}]" if isinstance(part, int) else f".{part}" for part in place)
-    kind, context, value = detail["type"], detail.get("ctx") or {}, detail["input"]
+    context, value = detail.get("ctx") or {}, detail["input"]
     if kind == "refused":
         return Fault(where, key, context["problem"], shown(value), context["allowed"], context["nearest"])
     if kind == "missing":
         return Fault(where, key, "this key is missing", allowed=_meaning(model, place))
     if kind == "extra_forbidden":
         keys = _keys_at(model, place[:-1])
-        return Fault(
-            where, key, "no such key here", allowed=", ".join(keys), nearest=nearest(str(place[-1]), keys)
-        )
+        return Fault(where, key, "no such key here", allowed=", ".join(keys), nearest=nearest(str(place[-1]), keys))
     problem, allowed, near = _plain_words(kind, context, value, detail["msg"])
     return Fault(where, key, problem, shown(value), allowed, near)
 
@@ -117,9 +115,7 @@ def _fault(detail: ErrorDetails, model: type[BaseModel], path: str, where: str) 
 def _plain_words(kind: str, context: Mapping[str, Any], value: object, message: str) -> tuple[str, str, str]:
     """(problem, allowed, nearest) for the errors that pydantic itself raises."""
     if kind in ("literal_error", "enum"):
-        words = [
-            word.strip(" '") for word in str(context.get("expected", "")).replace(" or ", ", ").split(",")
-        ]
+        words = [word.strip(" '") for word in str(context.get("expected", "")).replace(" or ", ", ").split(",")]
         near = nearest(value, words) if isinstance(value, str) else ""
         return (
             "not one of the words that may stand here",
@@ -128,13 +124,7 @@ def _plain_words(kind: str, context: Mapping[str, Any], value: object, message: 
         )
     if kind in ("bool_type", "bool_parsing"):
         word = str(value).strip().lower()
-        guess = (
-            "true"
-            if word in ("true", "yes", "on", "1")
-            else "false"
-            if word in ("false", "no", "off", "0")
-            else ""
-        )
+        guess = "true" if word in ("true", "yes", "on", "1") else "false" if word in ("false", "no", "off", "0") else ""
         return "not a yes or no", "true or false, without quotes", guess
     if kind in ("list_type", "tuple_type"):
         return (

@@ -35,9 +35,7 @@ CHOOSE = "choose"
 
 def refusal(problem: str, *, allowed: str = "", nearest: str = "") -> PydanticCustomError:
     """A validation error in plain words, ready to become a fault."""
-    return PydanticCustomError(
-        "refused", "{problem}", {"problem": problem, "allowed": allowed, "nearest": nearest}
-    )
+    return PydanticCustomError("refused", "{problem}", {"problem": problem, "allowed": allowed, "nearest": nearest})
 
 
 class _Field:
@@ -52,9 +50,7 @@ class _Field:
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
         return core_schema.no_info_plain_validator_function(self.read)
 
-    def __get_pydantic_json_schema__(
-        self, schema: CoreSchema, handler: GetJsonSchemaHandler
-    ) -> dict[str, Any]:
+    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
         return self.schema()
 
 
@@ -78,9 +74,7 @@ class QuantityField(_Field):
         try:
             number = parse(value, self.quantity)
         except QuantityError as error:
-            raise refusal(
-                error.problem, allowed=self._with_choose(error.allowed), nearest=error.nearest
-            ) from None
+            raise refusal(error.problem, allowed=self._with_choose(error.allowed), nearest=error.nearest) from None
         if not (self.low <= number <= self.high) or (self.above and number == self.low):
             unit = str(value).strip(" \t").lstrip("+-.0123456789eE").strip()
             raise refusal(
@@ -125,11 +119,7 @@ class QuantityField(_Field):
     def _example(self) -> str:
         number = parse(self.quantity.example, self.quantity)
         inside = self.low <= number <= self.high
-        return (
-            self.quantity.example
-            if inside
-            else self._outer(self.high if math.isfinite(self.high) else self.low)
-        )
+        return self.quantity.example if inside else self._outer(self.high if math.isfinite(self.high) else self.low)
 
     def _bound(self, number: float, unit: str) -> str:
         unit = unit if unit in self.quantity.units else self.quantity.unit
@@ -212,9 +202,7 @@ class TextField(_Field):
         if len(text) > self.longest:
             raise refusal(f"a text of {len(text)} characters, too long", allowed=allowed)
         if text != text.strip():
-            raise refusal(
-                "blanks at the ends", allowed=allowed, nearest=f'"{text.strip()}"' if text.strip() else ""
-            )
+            raise refusal("blanks at the ends", allowed=allowed, nearest=f'"{text.strip()}"' if text.strip() else "")
         if not text and not self.empty:
             raise refusal("an empty text", allowed=allowed)
         return text
@@ -294,9 +282,7 @@ class _LabField(_Field):
             raise refusal("not a colour", allowed=allowed, nearest="[95, 0, -2]")
         if any(isinstance(v, bool) or not isinstance(v, int | float) or not math.isfinite(v) for v in value):
             raise refusal("not three finite numbers", allowed=allowed)
-        held = [
-            min(max(float(v), low), high) + 0.0 for v, (low, high) in zip(value, _LAB_BOUNDS, strict=True)
-        ]
+        held = [min(max(float(v), low), high) + 0.0 for v, (low, high) in zip(value, _LAB_BOUNDS, strict=True)]
         if any(a != b for a, b in zip(held, value, strict=True)):
             raise refusal("out of range", allowed=allowed, nearest=f"[{', '.join(plain(v) for v in held)}]")
         return held[0], held[1], held[2]

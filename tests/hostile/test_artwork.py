@@ -22,7 +22,10 @@ from patterngen.errors import InputError
 from patterngen.job.read import load
 from patterngen.model.job import Job
 
-HEAD = '<svg xmlns="http://www.w3.org/2000/svg" xmlns:xlink="http://www.w3.org/1999/xlink" width="60mm" height="40mm" viewBox="0 0 60 40">'  # fmt: skip
+HEAD = (
+    '<svg xmlns="http://www.w3.org/2000/svg" xmlns:xlink="http://www.w3.org/1999/xlink"'
+    ' width="60mm" height="40mm" viewBox="0 0 60 40">'
+)
 PANEL = '<rect x="5" y="5" width="20" height="10"/>'
 
 
@@ -45,7 +48,8 @@ def use_tree(levels: int) -> bytes:
 
 def laughs() -> bytes:
     entities = "".join(f'<!ENTITY l{n} "{f"&l{n - 1};" * 10}">' for n in range(1, 11))
-    return f'<?xml version="1.0"?><!DOCTYPE svg [<!ENTITY l0 "ha">{entities}]>{HEAD}<desc>&l10;</desc></svg>'.encode()
+    kind = f'<!DOCTYPE svg [<!ENTITY l0 "ha">{entities}]>'
+    return f"{kind}{HEAD}<desc>&l10;</desc></svg>".encode()
 
 
 SVG_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
@@ -57,8 +61,14 @@ SVG_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "no namespace": (lambda: b'<svg width="1mm" height="1mm"/>', ("no SVG",)),
     "png by content": (lambda: b"\x89PNG\r\n\x1a\n" + b"\0" * 50, ("no SVG, by its content",)),
     "random bytes": (lambda: np.random.default_rng(7).bytes(5000), ("not well-formed",)),
-    "document type": (lambda: f'<!DOCTYPE svg PUBLIC "-//W3C//DTD SVG 1.1//EN" "x.dtd">{HEAD}</svg>'.encode(), ("document type",)),
-    "external entity": (lambda: f'<!DOCTYPE svg [<!ENTITY x SYSTEM "file:///etc/passwd">]>{HEAD}<desc>&x;</desc></svg>'.encode(), ("document type",)),
+    "document type": (
+        lambda: f'<!DOCTYPE svg PUBLIC "-//W3C//DTD SVG 1.1//EN" "x.dtd">{HEAD}</svg>'.encode(),
+        ("document type",),
+    ),
+    "external entity": (
+        lambda: f'<!DOCTYPE svg [<!ENTITY x SYSTEM "file:///etc/passwd">]>{HEAD}<desc>&x;</desc></svg>'.encode(),
+        ("document type",),
+    ),
     "laughs": (laughs, ("document type",)),
     "a million deep": (lambda: (HEAD + "<g>" * 1_000_000).encode(), ("nested too deep",)),
     "a hundred deep": (svg("<g>" * 100 + "</g>" * 100), ("nested too deep",)),
@@ -66,7 +76,10 @@ SVG_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "too many points": (path("M0 0" + "l1 1" * 1_100_000), ("too many points",)),
     "too many bytes": (svg("<!--" + "x" * (9 << 20) + "-->"), ("too large",)),
     "use of itself": (svg('<g id="a"><use href="#a"/></g>'), ("refers to itself",)),
-    "use in a circle": (svg('<g id="a"><use href="#b"/></g><g id="b"><use href="#a"/></g>'), ("refers to itself",)),
+    "use in a circle": (
+        svg('<g id="a"><use href="#b"/></g><g id="b"><use href="#a"/></g>'),
+        ("refers to itself",),
+    ),
     "use 2^20 times": (lambda: use_tree(20), ("uses of uses",)),
     "use of nothing": (svg('<use href="#nobody"/>'), ("not there",)),
     "use over the network": (svg('<use href="http://example.com/a.svg#x"/>'), ("outside the file",)),
@@ -99,7 +112,10 @@ SVG_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "many transforms": (svg(f'<g transform="{"rotate(1) " * 10_000}">{PANEL}</g>'), ("transform",)),
     "transform of words": (svg(f'<g transform="spin(9)">{PANEL}</g>'), ("transform",)),
     "transform short of numbers": (svg(f'<g transform="matrix(1 0 0)">{PANEL}</g>'), ("transform",)),
-    "transform in the style": (svg(f'<g style="transform:scale(2)">{PANEL}</g>'), ("transform in its style",)),
+    "transform in the style": (
+        svg(f'<g style="transform:scale(2)">{PANEL}</g>'),
+        ("transform in its style",),
+    ),
     "clipped": (svg(f'<g clip-path="url(#c)">{PANEL}</g>'), ("clip-path",)),
     "masked by a style sheet": (svg(f"<style>.m{{mask:url(#m)}}</style><g class='m'>{PANEL}</g>"), ("mask",)),
     "page in a page": (svg(f"<svg>{PANEL}</svg>"), ("page within the page",)),
@@ -108,12 +124,15 @@ SVG_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "only a line": (svg('<line x2="50" y2="30"/><path d="M0 0h5"/>'), ("nothing in it has an area",)),
     "off the sheet": (svg('<rect x="500" y="5" width="20" height="10"/>'), ("wholly outside",)),
     "packed": (lambda: gzip.compress(b" " * 50_000_000), ("packed",)),
-}  # fmt: skip
+}
 
 SVG_MENDED = {
     "script": (svg(f"<script>alert(1)</script>{PANEL}"), "<script>"),
     "handler": (svg(f'<g onload="alert(1)">{PANEL}</g>'), "event handlers"),
-    "foreign object": (svg(f'<foreignObject><p xmlns="http://www.w3.org/1999/xhtml">x</p></foreignObject>{PANEL}'), "<foreignObject>"),
+    "foreign object": (
+        svg(f'<foreignObject><p xmlns="http://www.w3.org/1999/xhtml">x</p></foreignObject>{PANEL}'),
+        "<foreignObject>",
+    ),
     "link": (svg(f'<a href="javascript:alert(1)">{PANEL}</a>'), "links"),
     "picture": (svg(f'<image href="http://example.com/x.png"/>{PANEL}'), "<image>"),
     "text": (svg(f"<text>Fennick</text>{PANEL}"), "<text>"),
@@ -122,7 +141,7 @@ SVG_MENDED = {
     "open": (svg('<path d="M5 5h20v10h-20"/>'), "closed by a straight line"),
     "bow tie": (svg('<path d="M5 5 L25 15 L25 5 L5 15 z"/>'), "crosses itself"),
     "beyond the sheet": (svg('<rect x="-5" y="5" width="200" height="10"/>'), "cut there"),
-}  # fmt: skip
+}
 
 PRESET = """\
 patterngen = 1
@@ -186,7 +205,8 @@ def test_drawing_mended(name: str, tmp_path: Path) -> None:
 
 def test_id(tmp_path: Path) -> None:
     """invariant: an id that is not there is told with the nearest one; one that is there twice is refused."""
-    drawing = svg('<rect id="panel" width="5" height="5"/><rect id="b" width="1" height="1"/><rect id="b" width="2" height="1"/>')()  # fmt: skip
+    two = '<rect id="b" width="1" height="1"/><rect id="b" width="2" height="1"/>'
+    drawing = svg(f'<rect id="panel" width="5" height="5"/>{two}')()
     line = refusal(with_area(tmp_path, drawing, more=', id = "pannel"'), "screen.clover.area.id")
     assert "nearest: panel" in line
     assert "more than one" in refusal(with_area(tmp_path, drawing, more=', id = "b"'), "screen.clover.area.id")
@@ -265,20 +285,33 @@ PICTURE_REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "random bytes": (lambda: np.random.default_rng(3).bytes(5000), ("no picture, by its content",)),
     "gif": (lambda: b"GIF89a" + b"\0" * 50, ("a GIF",)),
     "bigtiff": (lambda: b"II+\0" + b"\0" * 50, ("BigTIFF",)),
-    "truncated png": (lambda: png(np.random.default_rng(1).integers(0, 255, (200, 200), np.uint8))[:5000], ("damaged or cut short",)),
+    "truncated png": (
+        lambda: png(np.random.default_rng(1).integers(0, 255, (200, 200), np.uint8))[:5000],
+        ("damaged or cut short",),
+    ),
     "truncated tiff": (lambda: tiff(np.zeros((200, 200), np.uint8))[:5000], ("damaged or cut short",)),
     "bad checksum": (lambda: png(RAMP).replace(b"IHDR\0", b"IHDR\1", 1), ("damaged or cut short",)),
     "bad data": (lambda: png_header(100, 100, b"rubbish"), ("damaged or cut short",)),
-    "12000 x 12000": (lambda: png_header(12_000, 12_000, zlib.compress(b"\0" * 12_001 * 12_000)), ("too many pixels", "12000 x 12000")),
+    "12000 x 12000": (
+        lambda: png_header(12_000, 12_000, zlib.compress(b"\0" * 12_001 * 12_000)),
+        ("too many pixels", "12000 x 12000"),
+    ),
     "100000 x 1 of nothing": (lambda: png_header(100_000, 1), ("damaged or cut short",)),
     "no width": (lambda: png_header(0, 5), ()),
-    "text bomb": (lambda: b"\x89PNG\r\n\x1a\n" + png_chunk(b"IHDR", struct.pack(">IIBBBBB", 4, 4, 8, 0, 0, 0, 0)) + b"".join(png_chunk(b"zTXt", b"k\0\0" + zlib.compress(b"x" * 50_000_000)) for _ in range(3)), ("damaged or cut short",)),
+    "text bomb": (
+        lambda: (
+            b"\x89PNG\r\n\x1a\n"
+            + png_chunk(b"IHDR", struct.pack(">IIBBBBB", 4, 4, 8, 0, 0, 0, 0))
+            + b"".join(png_chunk(b"zTXt", b"k\0\0" + zlib.compress(b"x" * 50_000_000)) for _ in range(3))
+        ),
+        ("damaged or cut short",),
+    ),
     "cmyk": (lambda: _saved(Image.new("CMYK", (4, 4)), "TIFF"), ("CMYK",)),
     "cmyk jpeg": (lambda: _saved(Image.new("CMYK", (4, 4)), "JPEG"), ("CMYK",)),
     "lab": (lambda: _saved(Image.new("LAB", (4, 4)), "TIFF"), ("CIELAB",)),
     "floats": (lambda: tiff(np.zeros((4, 4), np.float32)), ("floating point",)),
     "32 bits": (lambda: tiff(np.zeros((4, 4), np.int32)), ("32 bit",)),
-}  # fmt: skip
+}
 
 
 def _saved(image: Image.Image, kind: str) -> bytes:
@@ -334,20 +367,40 @@ PICTURES: dict[str, tuple[Callable[[], bytes], np.ndarray, float]] = {
     "16 bit png": (lambda: png(RAMP.astype(np.uint16) * 257 + 100), (RAMP * 257.0 + 100) / 65535, 1e-7),
     "8 bit tiff": (lambda: tiff(RAMP), GREY, 1e-7),
     "16 bit tiff": (lambda: tiff(RAMP.astype(np.uint16) * 257), GREY, 1e-7),
-    "16 bit tiff, big end first": (lambda: _saved(Image.frombytes("I;16B", (12, 4), (RAMP.astype(">u2") * 257).astype(">u2").tobytes()), "TIFF"), GREY, 1e-7),
+    "16 bit tiff, big end first": (
+        lambda: _saved(Image.frombytes("I;16B", (12, 4), (RAMP.astype(">u2") * 257).astype(">u2").tobytes()), "TIFF"),
+        GREY,
+        1e-7,
+    ),
     "white is zero": (lambda: tiff(RAMP, tiffinfo={262: 0}), GREY, 1e-7),
     "16 bit, white is zero": (lambda: _white_is_zero_16(), 1 - GREY, 1e-7),
     "1 bit": (lambda: _saved(Image.fromarray(RAMP > 120), "PNG"), (RAMP > 120).astype(float), 1e-7),
-    "jpeg": (lambda: _saved(Image.fromarray(np.repeat(np.repeat(RAMP, 8, 0), 8, 1)), "JPEG"), np.repeat(np.repeat(GREY, 8, 0), 8, 1), 0.02),
+    "jpeg": (
+        lambda: _saved(Image.fromarray(np.repeat(np.repeat(RAMP, 8, 0), 8, 1)), "JPEG"),
+        np.repeat(np.repeat(GREY, 8, 0), 8, 1),
+        0.02,
+    ),
     "rgb": (lambda: png(RGB), LUMA, 1e-5),
     "palette": (_palette, GREY, 1e-5),
     "half clear": (_transparent, GREY * (128 / 255) + (1 - 128 / 255), 1e-5),
     "clear colour": (lambda: png(RAMP, transparency=0), np.where(RAMP == 0, 1.0, GREY), 1e-5),
-    "clear colour in 16 bits": (lambda: png(RAMP.astype(np.uint16) * 257, transparency=0), np.where(RAMP == 0, 1.0, GREY), 1e-5),
-    **{f"turned {n}, {kind}": ((lambda kind=kind, n=n: _oriented(kind, n)), GREY, 1e-7 if kind != "JPEG" else 0.2) for n in (1, 2, 3, 6, 8) for kind in ("PNG", "TIFF")},
+    "clear colour in 16 bits": (
+        lambda: png(RAMP.astype(np.uint16) * 257, transparency=0),
+        np.where(RAMP == 0, 1.0, GREY),
+        1e-5,
+    ),
+    **{
+        f"turned {n}, {kind}": (
+            (lambda kind=kind, n=n: _oriented(kind, n)),
+            GREY,
+            1e-7 if kind != "JPEG" else 0.2,
+        )
+        for n in (1, 2, 3, 6, 8)
+        for kind in ("PNG", "TIFF")
+    },
     "turned jpeg": (lambda: _oriented_jpeg(), np.repeat(np.repeat(GREY, 8, 0), 8, 1), 0.02),
     "loop of pages": (tiff_loop, np.full((4, 4), 128 / 255), 1e-7),
-}  # fmt: skip
+}
 
 
 def _oriented_jpeg() -> bytes:

@@ -110,8 +110,14 @@ REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "negative tone": (changed('"40 %"', '"-1 %"'), ("screen.clover.tone", '"0 %"')),
     "tone as a fraction": (changed('"40 %"', "0.5"), ('"50 %"',)),
     "ruling beyond the imager": (changed('"150 lpi"', '"2400 lpi"'), ("screen.clover.ruling", '"1200 lpi"')),
-    "no inks": (lambda: GOOD.replace('[[ink]]\nname = "Clover"\nlab = [55, -37, -50]\n', "").encode(), ("ink", "missing")),
-    "empty list of inks": (lambda: ("ink = []\n" + GOOD.replace('[[ink]]\nname = "Clover"\nlab = [55, -37, -50]\n', "")).encode(), ("[[ink]], one or more",)),
+    "no inks": (
+        lambda: GOOD.replace('[[ink]]\nname = "Clover"\nlab = [55, -37, -50]\n', "").encode(),
+        ("ink", "missing"),
+    ),
+    "empty list of inks": (
+        lambda: ("ink = []\n" + GOOD.replace('[[ink]]\nname = "Clover"\nlab = [55, -37, -50]\n', "")).encode(),
+        ("[[ink]], one or more",),
+    ),
     "17 inks": (inks(*(f'"Clover {n}"' for n in range(17))), ("17 tables [[ink]]", "at most 16")),
     "10,000 inks": (inks(*(f'"Clover {n}"' for n in range(10_000))), ("10000 tables [[ink]]",)),
     "no screens": (lambda: GOOD[: GOOD.index("[[screen]]")].encode(), ("screen", "missing")),
@@ -150,20 +156,35 @@ REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "search of a later version": (added("[choose]\n"), ("does not search for angles yet",)),
     "unknown kind": (changed('kind = "dots"', 'kind = "dost"'), ("screen.clover.kind", '"dots"')),
     "unknown shape": (changed('kind = "dots"', 'kind = "dots"\nshape = "rouhd"'), ("screen.clover.shape",)),
-    "unknown process": (changed('imager = "2400 dpi"', 'process = "sheetfed-ofset"'), ("press.process", "sheetfed-offset")),
+    "unknown process": (
+        changed('imager = "2400 dpi"', 'process = "sheetfed-ofset"'),
+        ("press.process", "sheetfed-offset"),
+    ),
     "unknown eye": (added('[viewing]\neye = "barten"\n'), ("viewing.eye", "barten1999")),
-    "unknown rule waived": (added('[[waive]]\nrule = "no-such-thing-at-all"\nreason = "x"\n'), ("waive[0].rule",)),
-    "two gains": (changed('imager = "2400 dpi"', 'gain = "16 %"\nedge_gain = "5 um"'), ("press.edge_gain", "two gains")),
+    "unknown rule waived": (
+        added('[[waive]]\nrule = "no-such-thing-at-all"\nreason = "x"\n'),
+        ("waive[0].rule",),
+    ),
+    "two gains": (
+        changed('imager = "2400 dpi"', 'gain = "16 %"\nedge_gain = "5 um"'),
+        ("press.edge_gain", "two gains"),
+    ),
     "single table for many": (changed("[[ink]]", "[ink]"), ("[[ink]]",)),
     "many tables for one": (changed("[sheet]", "[[sheet]]"), ("[sheet]",)),
     "a date": (changed('"15 deg"', "1979-05-27"), ("date",)),
     "impossible date": (changed('"15 deg"', "1979-02-31"), ()),
-    "overprint of nobody": (added('[[overprint]]\ninks = ["Clover", "Rust"]\nlab = [1, 2, 3]\n'), ("overprint[0].inks[1]",)),
+    "overprint of nobody": (
+        added('[[overprint]]\ninks = ["Clover", "Rust"]\nlab = [1, 2, 3]\n'),
+        ("overprint[0].inks[1]",),
+    ),
     "overprint of one": (added('[[overprint]]\ninks = ["Clover"]\nlab = [1, 2, 3]\n'), ("at least 2",)),
-    "overprint with itself": (added('[[overprint]]\ninks = ["Clover", "Clover"]\nlab = [1, 2, 3]\n'), ("twice",)),
+    "overprint with itself": (
+        added('[[overprint]]\ninks = ["Clover", "Clover"]\nlab = [1, 2, 3]\n'),
+        ("twice",),
+    ),
     "overprint without colour": (added('[[overprint]]\ninks = ["Clover", "Rust"]\n'), ("overprint[0].lab",)),
     "surrogate": (changed('cream lid"', 'cream \\uD800 lid"'), ("line 2",)),
-}  # fmt: skip
+}
 
 
 @pytest.mark.parametrize("name", REFUSED)
@@ -205,9 +226,7 @@ def test_texts_stay_as_they_are(tmp_path: Path) -> None:
     title = "</script><script>alert(1)</script> ]]> &x; ) /OpenAction ( \\ \u00e9 \U0001f404"
     path = tmp_path / "lid.toml"
     path.write_text(
-        GOOD.replace('"Fennick & Oake, cream lid"', f"'{title}'").replace(
-            '"Clover"', "'Clo/ver (1) <#%> \U0001f404'"
-        ),
+        GOOD.replace('"Fennick & Oake, cream lid"', f"'{title}'").replace('"Clover"', "'Clo/ver (1) <#%> \U0001f404'"),
         encoding="utf-8",
     )
     job = load(path)
@@ -218,9 +237,7 @@ def test_texts_stay_as_they_are(tmp_path: Path) -> None:
 def test_minus_zero(tmp_path: Path) -> None:
     """invariant: -0.0 is read as 0."""
     path = tmp_path / "lid.toml"
-    path.write_text(
-        GOOD.replace("[55, -37, -50]", "[55, -0.0, -50]").replace("15 deg", "-0.0 deg"), encoding="utf-8"
-    )
+    path.write_text(GOOD.replace("[55, -37, -50]", "[55, -0.0, -50]").replace("15 deg", "-0.0 deg"), encoding="utf-8")
     job = load(path)
     assert str(job.inks[0].lab) == "(55.0, 0.0, -50.0)"
     assert str(job.screens[0].angle_deg) == "0.0"
@@ -228,7 +245,14 @@ def test_minus_zero(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize(
     ("name", "words"),
-    [("missing", "does not exist"), ("folder", "is a folder"), ("pipe", "is a pipe"), ("socket", "is a socket"), ("inside a file", "not a folder"), ("circle", "cannot be opened")],
+    [
+        ("missing", "does not exist"),
+        ("folder", "is a folder"),
+        ("pipe", "is a pipe"),
+        ("socket", "is a socket"),
+        ("inside a file", "not a folder"),
+        ("circle", "cannot be opened"),
+    ],
 )  # fmt: skip
 def test_no_plain_file(name: str, words: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """invariant: refused before anything is read; a pipe nobody writes to does not hold us."""
@@ -258,9 +282,7 @@ def test_device() -> None:
         load("/dev/zero")
 
 
-@pytest.mark.skipif(
-    os.geteuid() == 0 and not Path("/usr/bin/setpriv").exists(), reason="root reads everything"
-)
+@pytest.mark.skipif(os.geteuid() == 0 and not Path("/usr/bin/setpriv").exists(), reason="root reads everything")
 def test_no_permission(tmp_path: Path) -> None:
     """invariant: no permission is told as such (tried as another user, as root may read everything)."""
     import subprocess
@@ -281,7 +303,9 @@ def test_no_permission(tmp_path: Path) -> None:
     for folder in (tmp_path, *tmp_path.parents):
         if folder.stat().st_uid == os.geteuid() and folder != Path("/"):
             folder.chmod(folder.stat().st_mode | 0o055)
-    told = subprocess.run([sys.executable, "-c", code, "lid.toml", str(tmp_path)], capture_output=True, text=True, cwd=tmp_path, env=os.environ | {"PYTHONPATH": os.pathsep.join(sys.path)}, check=True)  # fmt: skip
+    command = [sys.executable, "-c", code, "lid.toml", str(tmp_path)]
+    home = os.environ | {"PYTHONPATH": os.pathsep.join(part or str(Path.cwd()) for part in sys.path)}
+    told = subprocess.run(command, capture_output=True, text=True, cwd=tmp_path, env=home, check=True)
     assert "no permission" in told.stdout
 
 

@@ -34,7 +34,7 @@ def test_written_and_hashed(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize("call", ["fsync", "replace", "open", "write", "read back"])
 def test_old_file_stays(call: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    """invariant: whichever call of the machine fails, the old file is whole, the fault named, nothing left."""
+    """invariant: whichever call fails, the old file is whole, the fault named, nothing left."""
     path = tmp_path / "lid.svg"
     path.write_bytes(OLD)
 

@@ -48,7 +48,7 @@ tone = "25 %"
 """
 
 
-@pytest.fixture()
+@pytest.fixture
 def preset(tmp_path: Path) -> Path:
     path = tmp_path / "cream-lid.toml"
     path.write_text(TEXT, encoding="utf-8")
@@ -73,7 +73,14 @@ def test_overrides_are_written_in(preset: Path, tmp_path: Path) -> None:
     ]
     job = load(preset, overrides)
     text = save(job, tmp_path / "copy.toml").read_text(encoding="utf-8")
-    for kept in ("# as last year", "# by hand", "# the ground", "# trimmed", "# end", "#:schema ./preset.schema.json"):
+    for kept in (
+        "# as last year",
+        "# by hand",
+        "# the ground",
+        "# trimmed",
+        "# end",
+        "#:schema ./preset.schema.json",
+    ):
         assert kept in text
     assert 'angle = "22.5 deg"     # by hand' in text
     again = load(tmp_path / "copy.toml")
