@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import Annotated
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import BaseModel, ConfigDict, field_validator
+from pydantic import BaseModel, ConfigDict
 
 from patterngen.model.area import BoolArray
+from patterngen.model.fields import ChoiceField
 from patterngen.model.job import ScreenRequest
 from patterngen.model.lattice import FloatArray, Lattice, direction
 from patterngen.model.screen import ComplexArray, Screen
@@ -36,14 +38,7 @@ class Params(BaseModel):
 
     model_config = ConfigDict(extra="forbid")
 
-    shape: str | None = None
-
-    @field_validator("shape")
-    @classmethod
-    def _known(cls, value: str | None) -> str | None:
-        if value is not None and value not in spot.FUNCTIONS:
-            raise ValueError(f"no spot function is called {value!r}; allowed: {', '.join(SHAPES)}")
-        return value
+    shape: Annotated[str, ChoiceField("a spot function", lambda: SHAPES)] | None = None
 
 
 class DotScreen(InkScreen):
