@@ -155,7 +155,10 @@ REFUSED: dict[str, tuple[Callable[[], bytes], tuple[str, ...]]] = {
     "key of a later version": (added('[[key]]\nname = "seal"\n'), ("does not make keys yet",)),
     "search of a later version": (added("[choose]\n"), ("does not search for angles yet",)),
     "unknown kind": (changed('kind = "dots"', 'kind = "dost"'), ("screen.clover.kind", '"dots"')),
-    "unknown shape": (changed('kind = "dots"', 'kind = "dots"\nshape = "rouhd"'), ("screen.clover.shape", "nearest: \"round\"")),
+    "unknown shape": (
+        changed('kind = "dots"', 'kind = "dots"\nshape = "rouhd"'),
+        ("screen.clover.shape", 'nearest: "round"'),
+    ),
     "unknown process": (
         changed('imager = "2400 dpi"', 'process = "sheetfed-ofset"'),
         ("press.process", "sheetfed-offset"),
