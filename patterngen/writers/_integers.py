@@ -63,9 +63,7 @@ def whole(polygons: Polygons) -> WholePolygons:
     unit = np.maximum(UNIT_MM / steps_mm, 0.5 * (high - low) / LARGEST)
     middle = np.rint(0.5 * (low + high) / unit)
     points = np.rint(polygons.uv / unit) - middle
-    frame = Lattice(
-        polygons.frame.place((middle * unit)[None, :])[0], unit[:, None] * polygons.frame.steps_mm
-    )
+    frame = Lattice(polygons.frame.place((middle * unit)[None, :])[0], unit[:, None] * polygons.frame.steps_mm)
     ring_start = np.asarray(polygons.ring_start, dtype=np.int64)
     shape_end = np.zeros(len(points), dtype=bool)
     shape_end[ring_start[np.asarray(polygons.shape_start[1:], dtype=np.int64)] - 1] = True

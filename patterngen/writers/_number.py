@@ -29,9 +29,7 @@ def number(value: float, *, significant: int = SIGNIFICANT) -> str:
     if value == 0:
         return "0"
     return str(
-        np.format_float_positional(
-            float(value), precision=significant, unique=False, fractional=False, trim="-"
-        )
+        np.format_float_positional(float(value), precision=significant, unique=False, fractional=False, trim="-")
     )
 
 

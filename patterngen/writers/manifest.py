@@ -40,9 +40,7 @@ def dumps(job: Job, files: Mapping[str, Written]) -> bytes:
             "job": job.name,
             "preset": {"sha256": hashlib.sha256(job.text.encode()).hexdigest(), "text": job.text},
             "seeds": plain(seeds),
-            "files": {
-                name: {"sha256": files[name].sha256, "bytes": files[name].size} for name in sorted(files)
-            },
+            "files": {name: {"sha256": files[name].sha256, "bytes": files[name].size} for name in sorted(files)},
         }
     )
 
@@ -56,9 +54,7 @@ def differences(folder: Path) -> list[str]:
     path = folder / NAME
     data = read_plain_file(path, most_bytes=_MOST_BYTES, what="the manifest")
     try:
-        files = {
-            str(name): (str(e["sha256"]), int(e["bytes"])) for name, e in json.loads(data)["files"].items()
-        }
+        files = {str(name): (str(e["sha256"]), int(e["bytes"])) for name, e in json.loads(data)["files"].items()}
     except (ValueError, KeyError, TypeError, AttributeError, RecursionError):
         raise InputError(Fault(str(path), "", "this is not a manifest")) from None
     out = []

@@ -144,9 +144,7 @@ class _SheetWriter:
             if key not in resources:
                 resources[key] = Dictionary()
         self.resources = resources
-        resources.ExtGState["/Over"] = pdf.make_indirect(
-            Dictionary(Type=Name.ExtGState, OP=True, op=True, OPM=1)
-        )
+        resources.ExtGState["/Over"] = pdf.make_indirect(Dictionary(Type=Name.ExtGState, OP=True, op=True, OPM=1))
 
     def draw(self, layer: Layer) -> None:
         """One ink: its separation, its layer, its shapes."""
@@ -211,9 +209,7 @@ class _SheetWriter:
     def _placements(self, stamps: Stamps) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
         """Where forms go: lattice indices (n, 2), and each form's number (n,)."""
         ij, variety, size = _cut(stamps)
-        kinds, kind, uses = np.unique(
-            variety * (BLOCK**2 + 1) + size, return_inverse=True, return_counts=True
-        )
+        kinds, kind, uses = np.unique(variety * (BLOCK**2 + 1) + size, return_inverse=True, return_counts=True)
         which, length = np.divmod(kinds, BLOCK**2 + 1)
         block = (length >= _LEAST_BLOCK) & (length * uses >= _WORTH)
         used, index = np.unique(which, return_inverse=True)

@@ -145,9 +145,7 @@ class _InkWriter:
                     continue
                 if key not in self.blocks:
                     self.blocks[key] = f"{self.identifier}-{len(self.blocks) + 1}"
-                    block = self._path(
-                        b"".join(figure.texts(_along(np.zeros((1, 2), dtype=np.int64), length)))
-                    )
+                    block = self._path(b"".join(figure.texts(_along(np.zeros((1, 2), dtype=np.int64), length))))
                     block["id"] = self.blocks[key]
                     self.drawing.defs.add(block)
                 for i, j in (at * figure.cells).tolist():
