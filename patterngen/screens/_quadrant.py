@@ -28,6 +28,7 @@ Budget = Callable[[FloatArray], FloatArray]
 
 _CLOSE = 1e-12
 _NARROW = 1e-15
+_LAST_DIGITS = 1e-15
 
 
 class Piece:
@@ -376,15 +377,27 @@ def _last_terms(n: int) -> FloatArray:
     return np.array(to_series[-3:].T, dtype=float)
 
 
-def _steady(shape: Shape, found: Stretches, nodes: int) -> Stretches:
-    """Stretches split until a polynomial of that many nodes holds each to the last digits."""
+def _slope(shape: Shape, label: NDArray[np.int64], w: FloatArray, p: FloatArray) -> FloatArray:
+    """dp/dw (n, m) at points of the curve, the rows lying on stretches with these labels (n,)."""
+    a, b = 0.5 * (p + w), 0.5 * (p - w)
+    out = np.empty_like(p)
+    for which in np.unique(label):
+        rows = label == which
+        na, nb = normal_of(shape, int(which), a[rows], b[rows])
+        out[rows] = (nb - na) / (na + nb)
+    return out
+
+
+def _steady(shape: Shape, found: Stretches, nodes: int, *, slopes: bool = False) -> Stretches:
+    """Stretches split until a polynomial of that many nodes holds the curve (or its slope) to the last digits."""
     x, _ = _gauss(nodes)
     done: list[tuple[NDArray[np.int64], FloatArray, FloatArray, NDArray[np.int64]]] = []
     of, start, stop, label = found.of, found.start, found.stop, found.label
     for _ in range(60):
         w = start[:, None] + (stop - start)[:, None] * x
         p, _ = curve(shape, w, found.levels[of][:, None])
-        rough = np.abs(p @ _last_terms(nodes)).max(axis=1) * (stop - start) > 1e-15
+        held = _slope(shape, label, w, p) if slopes else p
+        rough = np.abs(held @ _last_terms(nodes)).max(axis=1) * (stop - start) > _LAST_DIGITS
         rough &= stop - start > 1e-13
         done.append((of[~rough], start[~rough], stop[~rough], label[~rough]))
         if not rough.any():
@@ -481,7 +494,7 @@ class _Walk:
 def _walk(shape: Shape, levels: FloatArray, *, longest: float = 2.0) -> _Walk:
     """Panels of 16 Gauss nodes, none longer than `longest` half cells."""
     nodes = 16
-    found = _steady(shape, stretches(shape, levels), nodes)
+    found = _steady(shape, stretches(shape, levels), nodes, slopes=True)
     pieces = np.maximum(1, np.ceil((found.stop - found.start) / longest)).astype(np.int64)
     index = np.repeat(np.arange(len(pieces)), pieces)
     part = np.arange(len(index)) - np.repeat(np.cumsum(pieces) - pieces, pieces)
@@ -491,11 +504,7 @@ def _walk(shape: Shape, levels: FloatArray, *, longest: float = 2.0) -> _Walk:
     of, label = found.of[index], found.label[index]
     p, _ = curve(shape, w, levels[of][:, None])
     a, b = 0.5 * (p + w), 0.5 * (p - w)
-    slope = np.empty_like(p)
-    for which in np.unique(label):
-        rows = label == which
-        na, nb = normal_of(shape, int(which), a[rows], b[rows])
-        slope[rows] = (nb - na) / (na + nb)
+    slope = _slope(shape, label, w, p)
     dw = -(width[:, None] * weight)  # along the outline, counter-clockwise, w falls
     return _Walk(of, a, b, 0.5 * (slope + 1) * dw, 0.5 * (slope - 1) * dw, label >= EDGE_A)
 
