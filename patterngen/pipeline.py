@@ -58,12 +58,16 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     from patterngen.beats.own import own_textures
     from patterngen.beats.together import tones_together
     from patterngen.colour.inks import InkStack
+    from patterngen.job.check import too_much
     from patterngen.rules import _engine, _limits
 
     tell = progress or _silent
     _refuse_choose(job)
     tell("deriving what was left open")
+    _engine.check_waivers(job.waivers)
     job = _engine.derive(job)
+    if faults := too_much(job, where=job.name):
+        raise InputError(faults)
     design = make_design(job)
     screens = design.base.screens
     colours = InkStack.of(job)

@@ -425,6 +425,8 @@ def _screen(reading: TableReading, press: Press, sheet: SheetSize, art: Any, rem
         if isinstance(reading["tone"], check.ImageTone)
         else ToneField(constant=reading["tone"], label=check.percent(reading["tone"]))
     )
+    if tone.constant is None:
+        area = area.within(tone.box_mm)
     return ScreenRequest(
         name=reading["name"],
         ink=reading["ink"],

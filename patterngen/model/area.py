@@ -69,6 +69,26 @@ class Area:
         return inside
 
 
+    def within(self, box_mm: tuple[float, float, float, float]) -> Area:
+        """The part of the area that lies in a box."""
+        x0, y0, x1, y1 = self.box_mm
+        a0, b0, a1, b1 = box_mm
+        box = (max(x0, a0), max(y0, b0), min(x1, a1), min(y1, b1))
+        if box == self.box_mm:
+            return self
+        if self.rings is None:
+            return Area(box, None, self.label)
+        import shapely
+
+        cut = self.geometry().intersection(shapely.box(*box))
+        rings = []
+        for part in shapely.get_parts(cut):
+            if part.geom_type == "Polygon" and not part.is_empty:
+                turned = shapely.orient_polygons(part)
+                rings += [shapely.get_coordinates(ring)[:-1] for ring in shapely.get_rings(turned)]
+        return Area(tuple(float(c) for c in cut.bounds), tuple(rings), self.label)  # type: ignore[arg-type]
+
+
 def _signed_area(ring: FloatArray) -> float:
     x, y = ring[:, 0], ring[:, 1]
     return float(0.5 * np.sum(x * np.roll(y, -1) - np.roll(x, -1) * y))
@@ -82,8 +102,10 @@ def _is_ccw(ring: FloatArray) -> bool:
 class ToneField:
     """Tone (0 to 1, on the plate) over the sheet: one value, or a grey picture.
 
-    `values` (rows, columns) float32, row 0 at the top, fills `box_mm`; outside the box
-    the tone is 0.  `constant` is None for a picture.
+    `values` (rows, columns) float32, row 0 at the top, fills `box_mm`.  Beyond the box its edge
+    goes on, so that a dot whose centre lies just outside is drawn and cut like any other;
+    whoever prints a picture cuts the area to the box (`Area.within`).  `constant` is None for a
+    picture.
     """
 
     constant: float | None = None
@@ -102,7 +124,6 @@ class ToneField:
             return np.full(np.broadcast(x, y).shape, self.constant)
         values, (x0, y0, x1, y1) = self.reduced(size_mm)
         rows, columns = values.shape
-        inside = (x >= x0) & (x <= x1) & (y >= y0) & (y <= y1)
         u = np.clip((x - x0) / (x1 - x0) * columns - 0.5, 0.0, columns - 1.0)
         v = np.clip((y1 - y) / (y1 - y0) * rows - 0.5, 0.0, rows - 1.0)
         i = np.minimum(u.astype(np.int64), max(columns - 2, 0))
@@ -111,7 +132,7 @@ class ToneField:
         i1, j1 = np.minimum(i + 1, columns - 1), np.minimum(j + 1, rows - 1)
         above = (1 - a) * values[j, i] + a * values[j, i1]
         below = (1 - a) * values[j1, i] + a * values[j1, i1]
-        return np.where(inside, (1 - b) * above + b * below, 0.0)
+        return (1 - b) * above + b * below
 
     def averaged(self, *, size_mm: float) -> ToneField:
         """The same field, its picture averaged once for `size_mm`, for whoever asks `at` many times."""

@@ -20,7 +20,7 @@ from PIL import Image
 import patterngen
 
 WIDTH_MM, HEIGHT_MM = 60.0, 44.0
-GLYPHS_AT_MM, GLYPH_HEIGHT_MM = (3.0, 9.0), 40.0
+GLYPHS_AT_MM, GLYPH_HEIGHT_MM = (1.0, 11.0), 29.0
 
 PRESET = """patterngen = 1
 title = "A photograph in letters"
@@ -65,7 +65,7 @@ def svg_of(text: TextPath) -> str:
 @pytest.mark.parametrize("shape", ["simpledot", "ellipse"])
 def test_a_photograph_in_letters(shape: str, tmp_path: Path) -> None:
     photograph = Image.open(cbook.get_sample_data("grace_hopper.jpg", asfileobj=False)).convert("L")
-    photograph = photograph.crop((0, 60, photograph.width, 60 + round(photograph.width * 30 / 56)))
+    photograph = photograph.crop((0, 40, photograph.width, 40 + round(photograph.width * 22 / 56)))
     photograph.save(tmp_path / "photograph.png")
     (tmp_path / "letters.svg").write_text(svg_of(letters()), encoding="utf-8")
     preset = tmp_path / "portrait.toml"
