@@ -71,7 +71,7 @@ def test_discs_to_high_orders() -> None:
 
 
 def test_diamond_of_cosines() -> None:
-    """second way: at half tone the cosine dot is the square on its corner, c = sinc((m + n) / 2) sinc((m - n) / 2) / 2."""
+    """second way: at half tone the cosine dot is the square on its corner, whose transform is sinc sinc / 2."""
     k = np.arange(-12, 13)
     m, n = np.meshgrid(k, k, indexing="ij")
     expected = 0.5 * np.sinc((m + n) / 2) * np.sinc((m - n) / 2)
@@ -89,8 +89,15 @@ def test_crosses_are_the_complement_of_shifted_squares() -> None:
 
 
 @pytest.mark.parametrize(
-    ("shape", "inverted"), [("simpledot", "invertedsimpledot"), ("ellipsea", "invertedellipsea"), ("ellipsec", "invertedellipsec"), ("doubledot", "inverteddoubledot"), ("double", "inverteddouble")]
-)  # fmt: skip
+    ("shape", "inverted"),
+    [
+        ("simpledot", "invertedsimpledot"),
+        ("ellipsea", "invertedellipsea"),
+        ("ellipsec", "invertedellipsec"),
+        ("doubledot", "inverteddoubledot"),
+        ("double", "inverteddouble"),
+    ],
+)
 @pytest.mark.parametrize("tone", [0.12, 0.5, 0.9])
 def test_inverted_shapes_are_complements(shape: str, inverted: str, tone: float) -> None:
     """invariant: an inverted shape inks what its sister at the remaining tone leaves clear."""
