@@ -65,9 +65,9 @@ class Outline:
     """One shape in frame units (1 = one lattice step): contours, filled non-zero.
 
     `disc` is its radius when the shape is a plain disc about the lattice point on a
-    square lattice (a writer may then stroke a round cap), else None.  `island_area` is
-    the area it inks that no other stamp of the same lattice and size inks, that is its
-    tone: stamps may overlap so that no seam shows between neighbours.
+    square lattice (a writer may then stroke a round cap), else None.  `tone` is the share of
+    the cell that stamps of this one outline, side by side on the lattice, ink together; the
+    outline itself may be larger, since stamps overlap so that no seam shows between neighbours.
     """
 
     contours: tuple[Contour, ...]
