@@ -132,7 +132,7 @@ class ToneField:
         i1, j1 = np.minimum(i + 1, columns - 1), np.minimum(j + 1, rows - 1)
         above = (1 - a) * values[j, i] + a * values[j, i1]
         below = (1 - a) * values[j1, i] + a * values[j1, i1]
-        return (1 - b) * above + b * below
+        return np.asarray((1 - b) * above + b * below)
 
     def averaged(self, *, size_mm: float) -> ToneField:
         """The same field, its picture averaged once for `size_mm`, for whoever asks `at` many times."""
