@@ -58,7 +58,7 @@ def run() -> NoReturn:
     """Run the command line and exit with the contract's codes; a traceback is never what a user sees."""
     signal.signal(signal.SIGTERM, _leave)
     try:
-        code = commands.main(standalone_mode=False)
+        code = commands.main(prog_name="patterngen", standalone_mode=False)
         sys.stdout.flush()
     except click.ClickException as error:
         _say(f"patterngen: {error.format_message()}")

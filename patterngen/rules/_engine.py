@@ -168,6 +168,11 @@ def _nearness(finding: Finding) -> float:
     return finding.margin / abs(finding.limit) if finding.limit else finding.margin
 
 
+def summaries() -> dict[str, str]:
+    """Every rule with what it is about, sorted by name."""
+    return {name: module.SUMMARY for name, module in registry.modules(PACKAGE).items()}
+
+
 def why(name: str) -> str:
     """A rule's page: its reason, what it measures, its limits by process, its sources.
 
