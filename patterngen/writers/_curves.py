@@ -12,8 +12,8 @@ import numpy as np
 from patterngen.model.lattice import FloatArray
 from patterngen.model.shapes import Contour, Outline
 
-_SAGITTA_MM = 6e-4
-"""Height of a curve over its chord; once the area is made good points are off by about 2/3 of it at the most."""
+SAGITTA_MM = 6e-4
+"""Height of a curve over its chord; once the area is made good points are off by about 2/3 of it at most."""
 _MOST_GROWTH = 1.25
 _TRIES = 8
 
@@ -23,15 +23,14 @@ def content(outline: Outline) -> bytes:
     return b"|".join(c.start.tobytes() + c.bends.tobytes() for c in outline.contours)
 
 
-def chords(contour: Contour, *, steps_mm: FloatArray) -> FloatArray:
+def chords(contour: Contour, *, steps_mm: FloatArray, sagitta_mm: float = SAGITTA_MM) -> FloatArray:
     """A contour as an open ring (n, 2) of straight pieces with the contour's own area.
 
-    `steps_mm` (2, 2) are the lattice steps that the contour is measured in.  Ends of
-    straight pieces stay where they are; the other corners move outwards by about two
-    thirds of the height of the curve over its chord, which is 0.6 micrometres or less.
+    `steps_mm` (2, 2) are the lattice steps that the contour is measured in, `sagitta_mm` the
+    height that a curve may have over its chord.  Ends of straight pieces stay where they
+    are; the other corners move outwards by about two thirds of that height.
     """
     wanted = contour.area()
-    sagitta_mm = _SAGITTA_MM
     for _ in range(_TRIES):
         ring, outward = _sampled(contour, steps_mm, sagitta_mm)
         far = _growth(ring, outward, wanted - _area(ring))

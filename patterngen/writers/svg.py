@@ -6,9 +6,9 @@ and shapes at whole numbers in it; many shapes share one path, long runs are blo
 again and again.
 
 Shapes are outlines of chords that enclose the exact area.  A sheet with too many different
-shapes for a file that anything could open is drawn lighter: discs as strokes of no length
-with round caps, all else as curves; readers show those one to two per cent too thin at
-2400 dpi.
+shapes for a file that anything could open is drawn lighter: with fewer chords, up to a
+micrometre off, and plain discs as strokes of no length with round caps, which readers show
+one to two per cent too thin at 2400 dpi.
 """
 
 from __future__ import annotations
@@ -24,8 +24,8 @@ from numpy.typing import NDArray
 from patterngen.model.design import Design
 from patterngen.model.job import Ink, SheetSize
 from patterngen.model.lattice import FloatArray, Lattice
-from patterngen.model.shapes import Batch, Contour, Outline, Polygons, Stamps
-from patterngen.writers._curves import chords, content
+from patterngen.model.shapes import Batch, Outline, Polygons, Stamps
+from patterngen.writers._curves import SAGITTA_MM, chords, content
 from patterngen.writers._integers import LARGEST, UNIT_MM, whole
 from patterngen.writers._number import integers, lookup, number, numbers, rows
 from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
@@ -33,8 +33,9 @@ from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
 _TEXT_A_PATH = 2_000_000
 """Characters in one path: well under the 8 to 10 million at which readers refuse an attribute."""
 _SHAPES_A_PATH = 20_000
-_MOST_EXACT = 100_000
-"""Shapes drawn one by one, above which the sheet is drawn lighter: about 15 MB of outlines."""
+_MOST_EXACT = 40_000
+"""Shapes drawn one by one, above which the sheet is drawn lighter: about 10 MB of outlines."""
+_LIGHT_SAGITTA_MM = 1.5e-3
 _STAMP_UNIT_MM = UNIT_MM / 4
 """Shapes that repeat are rounded finer, for each rounds the same way and their area would be off together."""
 _BLOCKS = (1024, 512, 256, 128, 64, 32, 16, 8, 4)
@@ -72,7 +73,7 @@ def _describe(sheet: SheetSize, *, light: bool) -> str:
     return (
         f"Trim {number(sheet.width_mm)} x {number(sheet.height_mm)} mm, bleed {number(sheet.bleed_mm)} mm. "
         "Colours are for display; the inks are named in data-ink. "
-        + ("Many shapes: drawn as strokes and curves." if light else "Shapes are outlines of exact area.")
+        + ("Many shapes: drawn lighter, discs as strokes." if light else "Shapes are outlines of exact area.")
     )
 
 
@@ -108,11 +109,8 @@ class _InkWriter:
         for batch in batches:
             if batch.total == 0:
                 continue
-            if isinstance(batch, Polygons):
-                groups = self._polygons(batch)
-            else:
-                groups = self._light(batch) if light else self._exact(batch)
-            for part in groups:
+            parts = self._polygons(batch) if isinstance(batch, Polygons) else self._stamps(batch, light=light)
+            for part in parts:
                 if part.elements:
                     group.add(part)
         self.group.add(group)
@@ -127,52 +125,48 @@ class _InkWriter:
     def _path(self, text: bytes, **extra: str) -> svgwrite.path.Path:
         return self.drawing.path(d=text.decode("ascii"), **extra)
 
-    def _exact(self, stamps: Stamps) -> Iterator[svgwrite.container.Group]:
-        """Repeated shapes as chords, long runs as blocks."""
-        cells = _cells(stamps)
-        group = self._frame(Lattice(stamps.lattice.origin_mm, stamps.lattice.steps_mm / cells[:, None]))
-        used = np.unique(stamps.variety)
-        for which in used:
-            outline = stamps.outlines[which]
-            figure = _Figure.of_chords(outline, stamps.lattice, cells)
-            chosen = stamps.variety == which
-            first, count = stamps.first[chosen].astype(np.int64), stamps.count[chosen].astype(np.int64)
-            lone = []
-            for length, at in _cut(first, count):
-                key = (content(outline), cells.tobytes(), length)
-                if length == 1 or (len(at) == 1 and key not in self.blocks):
-                    lone.append(_along(at, length))
-                    continue
-                if key not in self.blocks:
-                    self.blocks[key] = f"{self.identifier}-{len(self.blocks) + 1}"
-                    block = self._path(b"".join(figure.texts(_along(np.zeros((1, 2), dtype=np.int64), length))))
-                    block["id"] = self.blocks[key]
-                    self.drawing.defs.add(block)
-                for i, j in (at * figure.cells).tolist():
-                    group.add(self.drawing.use(f"#{self.blocks[key]}", x=i, y=j))
-            if lone:
-                for text in figure.texts(np.concatenate(lone)):
-                    group.add(self._path(text))
-        yield group
-
-    def _light(self, stamps: Stamps) -> Iterator[svgwrite.container.Group]:
-        """Repeated shapes as round caps, where they are discs, and curves; paths by variety."""
-        cells = _cells(stamps)
+    def _stamps(self, stamps: Stamps, *, light: bool) -> Iterator[svgwrite.container.Group]:
+        """Repeated shapes by variety: long runs as blocks, the rest one by one."""
+        unit_mm, sagitta_mm = (UNIT_MM, _LIGHT_SAGITTA_MM) if light else (_STAMP_UNIT_MM, SAGITTA_MM)
+        cells = _cells(stamps, unit_mm)
         discs = self._frame(stamps.lattice, fill="none", stroke=self.colour, stroke_linecap="round")
         outlines = self._frame(Lattice(stamps.lattice.origin_mm, stamps.lattice.steps_mm / cells[:, None]))
-        places, variety = stamps.expand()
-        order = np.argsort(variety, kind="stable")
-        used, begin = np.unique(variety[order], return_index=True)
-        for which, at in zip(used, np.split(places[order].astype(np.int64), begin[1:]), strict=True):
+        order = np.argsort(stamps.variety, kind="stable")
+        used, begin = np.unique(stamps.variety[order], return_index=True)
+        for which, runs in zip(used, np.split(order, begin[1:]), strict=True):
             outline = stamps.outlines[which]
-            if outline.disc is not None:
-                for text in _cap_texts(at):
+            first, count = stamps.first[runs].astype(np.int64), stamps.count[runs].astype(np.int64)
+            if light and outline.disc is not None:
+                for text in _cap_texts(_along(first, count)):
                     discs.add(self._path(text, stroke_width=number(2 * outline.disc)))
-            else:
-                for text in _Figure.of_curves(outline, cells).texts(at):
-                    outlines.add(self._path(text))
+                continue
+            figure = _Figure.of(outline, stamps.lattice, cells, sagitta_mm)
+            lone = []
+            for length, at in _cut(first, count):
+                block = self._block(outline, figure, length, worth=len(at) > 1)
+                if block:
+                    for i, j in (at * figure.cells).tolist():
+                        outlines.add(self.drawing.use(block, x=i, y=j))
+                else:
+                    lone.append(_along(at, np.full(len(at), length)))
+            for text in figure.texts(np.concatenate(lone)) if lone else ():
+                outlines.add(self._path(text))
         yield discs
         yield outlines
+
+    def _block(self, outline: Outline, figure: _Figure, length: int, *, worth: bool) -> str:
+        """Reference to `length` shapes in a row, made if it is worth it; empty if it is not."""
+        if length == 1:
+            return ""
+        key = (content(outline), figure.cells.tobytes(), length)
+        if key not in self.blocks:
+            if not worth:
+                return ""
+            self.blocks[key] = f"{self.identifier}-{len(self.blocks) + 1}"
+            row = self._path(b"".join(figure.texts(_along(np.zeros((1, 2), dtype=np.int64), np.array([length])))))
+            row["id"] = self.blocks[key]
+            self.drawing.defs.add(row)
+        return f"#{self.blocks[key]}"
 
     def _polygons(self, polygons: Polygons) -> Iterator[svgwrite.container.Group]:
         """Loose polygons, whole shapes together in a path."""
@@ -205,24 +199,21 @@ class _Figure:
     body: bytes
 
     @classmethod
-    def of_chords(cls, outline: Outline, lattice: Lattice, cells: FloatArray) -> _Figure:
+    def of(cls, outline: Outline, lattice: Lattice, cells: FloatArray, sagitta_mm: float) -> _Figure:
         """Contours of straight pieces that enclose the exact area."""
-        rings = [_rounded(chords(c, steps_mm=lattice.steps_mm), cells) for c in outline.contours]
-        return cls._of(cells, [(ring[0], "l" + _spelled(np.diff(ring, axis=0))) for ring in rings])
-
-    @classmethod
-    def of_curves(cls, outline: Outline, cells: FloatArray) -> _Figure:
-        """Contours as the cubics they are."""
-        return cls._of(cells, [(_rounded(c.start, cells), _bends(c, cells)) for c in outline.contours])
-
-    @classmethod
-    def _of(cls, cells: FloatArray, contours: list[tuple[NDArray[np.int64], str]]) -> _Figure:
-        home = contours[0][0]
+        steps_mm = lattice.steps_mm
+        rings = [
+            np.rint(chords(contour, steps_mm=steps_mm, sagitta_mm=sagitta_mm) * cells).astype(np.int64)
+            for contour in outline.contours
+        ]
+        start = home = rings[0][0]
         text: list[str] = []
-        for start, bends in contours:
-            text.append((f"m{_spelled(start - home)}" if text else "") + bends + "z")
-            home = start
-        return cls(cells.astype(np.int64), contours[0][0], home, "".join(text).encode())
+        for ring in rings:
+            if text:
+                text.append(f"m{_spelled(ring[0] - home)}")
+            text.append(f"l{_spelled(np.diff(ring, axis=0))}z")
+            home = ring[0]
+        return cls(cells.astype(np.int64), start, home, "".join(text).encode())
 
     def texts(self, ij: NDArray[np.int64]) -> Iterator[bytes]:
         """Path texts that draw the outline at lattice points (n, 2), each placed from the one before."""
@@ -234,28 +225,15 @@ class _Figure:
             yield rows(b"m", integers(step[:, 0]), b" ", integers(step[:, 1]), self.body)
 
 
-def _cells(stamps: Stamps) -> FloatArray:
-    """Whole numbers (2,) to a lattice step: `_STAMP_UNIT_MM`, or coarser on a very large sheet."""
+def _cells(stamps: Stamps, unit_mm: float) -> FloatArray:
+    """Whole numbers (2,) to a lattice step: of `unit_mm`, or coarser on a very large sheet."""
     steps_mm = stamps.lattice.steps_mm
     farthest = max(1, int(np.abs(stamps.first).max()), int((stamps.first[:, 0] + stamps.count).max()))
-    return np.minimum(np.ceil(np.hypot(steps_mm[:, 0], steps_mm[:, 1]) / _STAMP_UNIT_MM), LARGEST // farthest)
-
-
-def _rounded(uv: FloatArray, cells: FloatArray) -> NDArray[np.int64]:
-    return np.rint(uv * cells).astype(np.int64)
+    return np.minimum(np.ceil(np.hypot(steps_mm[:, 0], steps_mm[:, 1]) / unit_mm), LARGEST // farthest)
 
 
 def _spelled(points: NDArray[np.int64]) -> str:
     return " ".join(str(value) for value in points.ravel().tolist())
-
-
-def _bends(contour: Contour, cells: FloatArray) -> str:
-    text = []
-    here = _rounded(contour.start, cells)
-    for bend, straight in zip(_rounded(contour.bends, cells), contour.straight, strict=True):
-        text.append(f"l{_spelled(bend[2] - here)}" if straight else f"c{_spelled(bend - here)}")
-        here = bend[2]
-    return "".join(text)
 
 
 def _cut(first: NDArray[np.int64], count: NDArray[np.int64]) -> Iterator[tuple[int, NDArray[np.int64]]]:
@@ -264,18 +242,17 @@ def _cut(first: NDArray[np.int64], count: NDArray[np.int64]) -> Iterator[tuple[i
     for length in (*_BLOCKS, 1):
         times = rest // length
         if times.any():
-            at = np.repeat(start, times, axis=0)
-            at[:, 0] += length * (np.arange(len(at)) - np.repeat(np.cumsum(times) - times, times))
-            yield length, at
+            steps = _along(np.zeros_like(start), times)
+            yield length, np.repeat(start, times, axis=0) + length * steps
         start = start.copy()
         start[:, 0] += times * length
         rest = rest - times * length
 
 
-def _along(start: NDArray[np.int64], length: int) -> NDArray[np.int64]:
-    """The places of runs of one length, row after row."""
-    at = np.repeat(start, length, axis=0)
-    at[:, 0] += np.tile(np.arange(length), len(start))
+def _along(start: NDArray[np.int64], count: NDArray[np.int64]) -> NDArray[np.int64]:
+    """The places of runs, row after row."""
+    at = np.repeat(start, count, axis=0)
+    at[:, 0] += np.arange(len(at)) - np.repeat(np.cumsum(count) - count, count)
     return at
 
 

@@ -76,9 +76,11 @@ def scattered(*, radius_steps: int, outline_disc: bool) -> Stamps:
     )
 
 
-@pytest.mark.parametrize("outline_disc", [True, False])
-def test_the_lighter_drawing_is_the_same_drawing(monkeypatch: pytest.MonkeyPatch, outline_disc: bool) -> None:
-    """second way: caps and curves against chords; no pixel off by more than the reader's two per cent of ink allow."""
+@pytest.mark.parametrize(("outline_disc", "ink"), [(True, 0.02), (False, 0.002)], ids=["caps", "chords"])
+def test_the_lighter_drawing_is_the_same_drawing(
+    monkeypatch: pytest.MonkeyPatch, outline_disc: bool, ink: float
+) -> None:
+    """second way: caps and fewer chords against the exact drawing; caps within the reader's two per cent of ink."""
     design = drawings.design(
         drawings.job(), drawings.Drawn("s", "Black", [scattered(radius_steps=9, outline_disc=outline_disc)])
     )
@@ -87,14 +89,14 @@ def test_the_lighter_drawing_is_the_same_drawing(monkeypatch: pytest.MonkeyPatch
     data = svg.write(design, rgb=RGB)
     light = drawings.read_svg(data)
     assert (b"stroke-linecap" in data) == outline_disc
-    assert light.mean() == pytest.approx(exact.mean(), rel=0.02)
+    assert light.mean() == pytest.approx(exact.mean(), rel=ink)
     # a pixel on an edge differs by the reader's flattening, up to half a pixel
     assert np.abs(light - exact).max() < 0.6
     assert np.mean(np.abs(light - exact)) < 0.02 * exact.mean()
 
 
 def test_many_shapes_are_drawn_lighter() -> None:
-    """invariant: beyond 100 000 lone shapes a disc takes few characters, and the description says so."""
+    """invariant: beyond 40 000 lone shapes a disc takes few characters, and the description says so."""
     lattice = Lattice.square(pitch_mm=0.1, angle_deg=0.0, origin_mm=np.zeros(2))
     n = 110_000
     index = np.arange(n)
@@ -107,7 +109,7 @@ def test_many_shapes_are_drawn_lighter() -> None:
     )
     data = svg.write(drawings.design(drawings.job(), drawings.Drawn("s", "Black", [stamps])), rgb=RGB)
     assert len(data) < 12 * n
-    assert b"drawn as strokes" in data
+    assert b"discs as strokes" in data
 
 
 def test_no_attribute_is_longer_than_readers_take() -> None:
