@@ -19,8 +19,10 @@ def report(verdict: Verdict, *, everything: bool) -> str:
     """What a busy person reads first; the rest with `everything`."""
     lines = [f"{strong(_WORDS[verdict.status], _COLOUR[verdict.status])}  {verdict.job}: {verdict.title}", ""]
     shown = [f for f in _by_weight(verdict.findings) if everything or f.status in ("fail", "warn", "waived")]
-    for finding in shown:
-        lines += _finding(finding)
+    for finding, following in zip(shown, [*shown[1:], None], strict=True):
+        # a source that several findings in a row share is told once, under the last of them
+        told_below = following is not None and following.source == finding.source
+        lines += _finding(finding, sourced=not told_below)
     lines.append(_counts(verdict, shown))
     if everything:
         lines += ["", *_screens(verdict), "", *_derived(verdict), "", *_beats(verdict)]
@@ -33,7 +35,7 @@ def _by_weight(findings: tuple[Finding, ...]) -> list[Finding]:
     return sorted(findings, key=lambda f: _ORDER.index(f.status))
 
 
-def _finding(finding: Finding) -> list[str]:
+def _finding(finding: Finding, *, sourced: bool) -> list[str]:
     head = f"{strong(finding.status, _COLOUR[finding.status])}  {finding.rule}"
     if finding.where:
         head += f"  ({finding.where})"
@@ -42,7 +44,8 @@ def _finding(finding: Finding) -> list[str]:
         body.append(
             f"measured {finding.measured:.4g}, limit {finding.limit:.4g}, margin {finding.margin:+.4g} {finding.unit}".rstrip()
         )
-    body.append(f"source: {finding.source.text} [{finding.source.standing}]")
+    if sourced:
+        body.append(f"source: {finding.source.text} [{finding.source.standing}]")
     if finding.waiver:
         body.append(f"waived: {finding.waiver}")
     wrapped = [

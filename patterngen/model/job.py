@@ -48,7 +48,10 @@ class Viewing:
 
 @dataclass(frozen=True, slots=True)
 class Gain:
-    """How shapes grow in print: `half_tone` is the tone value increase at 0.5 (0 to 1), or `edge_mm` the growth of every edge."""
+    """How shapes grow in print.
+
+    `half_tone` is the tone value increase at 0.5 (0 to 1), or `edge_mm` the growth of every edge.
+    """
 
     half_tone: float = 0.0
     edge_mm: float = 0.0

@@ -36,7 +36,7 @@ class Screen(ABC):
     frequencies_per_mm: FloatArray
     """(m, 2): m = 1 for lines, 2 for dots (along the rows, then at right angles)."""
     symmetry_deg: float
-    """Turn after which the screen's directions repeat, for angle rules: 180 for lines and dots with an axis, 90 for dots."""
+    """Turn after which the directions repeat, for angle rules: 180 for lines and dots with an axis, 90 for dots."""
 
     @abstractmethod
     def coefficients(self, tone: float, *, reach: int) -> ComplexArray:

@@ -118,6 +118,13 @@ class BeatTable:
         with np.errstate(divide="ignore"):
             return np.where(f > 0, 1.0 / np.maximum(f, 1e-300), np.inf)
 
+    def taking_part(self) -> NDArray[np.bool_]:
+        """(n, slots): who takes part in each row."""
+        starts = np.cumsum([0, *(size for _, size in self.slots)])[:-1]
+        if not len(self.orders) or not len(starts):
+            return np.zeros((len(self.orders), len(starts)), dtype=bool)
+        return np.asarray(np.add.reduceat(self.orders != 0, starts, axis=1) > 0)
+
     def participants(self, row: int) -> dict[str, list[int]]:
         """Names and orders of those taking part in a row."""
         out: dict[str, list[int]] = {}

@@ -31,17 +31,20 @@ def patterns(table: BeatTable, rows: Sequence[int], strength: FloatArray) -> lis
 
     One pattern has the same participants, period and `strength` (n,), the last two within 2 %.
     """
+    who = table.taking_part() @ (1 << np.arange(len(table.slots), dtype=np.int64))
+    period = table.period_mm
     out: list[list[int]] = []
+    alike: dict[int, list[list[int]]] = {}
     for row in sorted(rows, key=lambda r: -strength[r]):
-        for pattern in out:
+        found = alike.setdefault(int(who[row]), [])
+        for pattern in found:
             first = pattern[0]
-            if (
-                set(table.participants(first)) == set(table.participants(row))
-                and math.isclose(table.period_mm[row], table.period_mm[first], rel_tol=_SAME)
-                and math.isclose(strength[row], strength[first], rel_tol=_SAME)
+            if math.isclose(period[row], period[first], rel_tol=_SAME) and math.isclose(
+                strength[row], strength[first], rel_tol=_SAME
             ):
                 pattern.append(row)
                 break
         else:
-            out.append([row])
+            found.append([row])
+            out.append(found[-1])
     return out

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from patterngen.model.evidence import Evidence
+from patterngen.model.screen import Screen
 from patterngen.model.verdict import BeatTable, Measurement
 from patterngen.rules._angles import screens_apart_deg
 from patterngen.rules._beats import far_limits, patterns, slower_than_sheet
@@ -25,6 +26,8 @@ MEASURES = """Contrast of each beat over the threshold contrast of the eye model
 bound is judged as well. Contrast is that of infinite extent, with the screens exactly as designed."""
 SOURCES = ("calibration-on-practice", "barten-1999", "beat-period-formula")
 LIMITS: tuple[str, ...] = ()
+_SAME_RULING, _LARGEST_TURN_DEG = 1e-3, 8.0
+"""A cure keeps the ruling, and turns a screen by so much at the most."""
 IDLE = "Fewer than two screens or grids: nothing can beat."
 
 EXAMPLE_PASS = preset(*usual_set())
@@ -119,8 +122,27 @@ def _advice(evidence: Evidence, row: int) -> str:
             f"They stand {degrees(off)} apart and meet in a higher order, which grows with dark tones: "
             "turn one of them by a few degrees or change one ruling."
         )
+    return f"Three screens or more that nearly cancel make slow bands. {_cure(evidence, row, inked)}"
+
+
+def _cure(evidence: Evidence, row: int, inked: list[Screen]) -> str:
+    """The one screen whose turn would make the combination cancel exactly, where there is one."""
+    part = evidence.beats.participants(row)
+    total = evidence.beats.frequency_per_mm[row]
+    changes = []
+    for screen in inked:
+        own = np.array(part[screen.name]) @ screen.frequencies_per_mm
+        wanted = own - total
+        ratio = complex(*wanted) / complex(*own)
+        changes.append((float(np.rad2deg(np.angle(ratio))), abs(ratio), screen))
+    turn_deg, stretch, screen = min(changes, key=lambda change: abs(change[1] - 1.0))
+    if abs(turn_deg) > _LARGEST_TURN_DEG or abs(stretch - 1.0) > _SAME_RULING:
+        return (
+            "Move one of them well away, by angle or by ruling; or set all three so that they cancel exactly, "
+            "as 15, 45 and 75 degrees at one ruling do."
+        )
     return (
-        "Three screens or more that nearly cancel make slow bands: set them exactly, as in 15, 45 and 75 "
-        "degrees at "
-        "one ruling, or move one of them well away, by angle or by ruling."
+        f"They would cancel exactly, and leave only balance, with {screen.name} at "
+        f"{degrees((screen.angle_deg + turn_deg) % 180.0)}; "
+        "or move one of them well away, by angle or by ruling."
     )
