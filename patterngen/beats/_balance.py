@@ -56,7 +56,7 @@ def balances(
     if len(hits):
         plates = Plates.of(over, press)
         for members in _groups(over, hits.orders):
-            inside = ~(over.taking_part(hits.orders) & ~members).any(axis=1)
+            inside = np.flatnonzero(~(over.taking_part(hits.orders) & ~members).any(axis=1))
             item = _weigh(over, hits.take(inside), members, plates, slowest_per_mm)
             if item is not None:
                 found.append(item)

@@ -57,7 +57,7 @@ class Strengths:
             members = np.flatnonzero(pattern == group)
             active = [int(i) for i in np.flatnonzero(printing[members[0]])]
             index = tuple(slice(None) if i in active else 0 for i in range(self.screens))
-            table = all_differences(root[index], tones[np.ix_(members, active)])
+            table = all_differences(root[index], tones[members][:, active])
             n_mean = table[:, 0, :].copy()
             self.mean[members] = n_mean**yule_nielsen
             table = table * (yule_nielsen * n_mean ** (yule_nielsen - 1.0))[:, None, :]
@@ -99,7 +99,7 @@ def product_bound(contrasts: FloatArray) -> tuple[float, FloatArray]:
     Exact for inks that multiply; where an overprint is stronger than the product (an opaque
     white on black) the shares of the screens in that set are raised until the bound holds.
     """
-    n = int(len(contrasts)).bit_length() - 1
+    n = len(contrasts).bit_length() - 1
     whole = float(contrasts[0])
     each = np.array([max(float(contrasts[1 << i]) / whole, 1e-9) for i in range(n)])
     sets = np.arange(len(contrasts))

@@ -16,7 +16,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from patterngen.model.lattice import FloatArray
 
@@ -67,7 +67,7 @@ class Combinations:
     floors: tuple[float, ...]
 
 
-class _TooMuch(Exception):
+class _TooMuchError(Exception):
     """More partial sums than the budget allows."""
 
 
@@ -117,15 +117,15 @@ class Travel:
             after.append(self.join(after[-1], self.single[n - 1 - i]))
         return [self.join(before[i], after[n - 1 - i]) for i in range(n)]
 
-    def at(self, table: FloatArray, length_per_mm: FloatArray) -> FloatArray:
+    def at(self, table: FloatArray, length_per_mm: ArrayLike) -> FloatArray:
         """Table values for lengths (never too small)."""
         g = np.clip(np.asarray(length_per_mm) / self.step_per_mm, 0, _LENGTH_STEPS - 1)
-        return table[g.astype(np.intp)]
+        return np.asarray(table[g.astype(np.intp)])
 
     def need(self, table: FloatArray, tiers: Sequence[Tier]) -> FloatArray:
         """For a partial sum of length g steps: 1 / the weight it must have to matter in some tier."""
         g = np.arange(_LENGTH_STEPS) * self.step_per_mm
-        return np.maximum.reduce([self.at(table, g - tier.high_per_mm) / tier.floor for tier in tiers])
+        return np.asarray(np.maximum.reduce([self.at(table, g - tier.high_per_mm) / tier.floor for tier in tiers]))
 
 
 # --- partial sums --------------------------------------------------------------------------
@@ -145,9 +145,10 @@ class _Sums:
     def choices(self, rows: IndexArray) -> NDArray[np.int32]:
         """(len(rows), participants of this half): candidate rows, -1 for none."""
         out = np.empty((len(rows), len(self.parents)), dtype=np.int32)
+        at = rows.astype(np.int32)
         for step in range(len(self.parents) - 1, -1, -1):
-            out[:, step] = self.elements[step][rows]
-            rows = self.parents[step][rows]
+            out[:, step] = self.elements[step][at]
+            at = self.parents[step][at]
         return out
 
 
@@ -161,7 +162,7 @@ def _spread(count: NDArray[np.intp]) -> tuple[IndexArray, IndexArray]:
 def _leading_sign(orders: OrderArray) -> NDArray[np.int8]:
     """Sign of the first order that is not zero, for each row."""
     first = np.argmax(orders != 0, axis=1)
-    return np.sign(orders[np.arange(len(orders)), first]).astype(np.int8)
+    return np.asarray(np.sign(orders[np.arange(len(orders)), first]), dtype=np.int8)
 
 
 def _grow(
@@ -180,7 +181,7 @@ def _grow(
         enough = weight * need.max()
         count = _how_many(offered, enough)
         if int(count.sum()) > 8 * budget:
-            raise _TooMuch
+            raise _TooMuchError
         row, at = _spread(count)
         new_x, new_y, new_weight = x[row] + cx[at], y[row] + cy[at], weight[row] * offered[at]
         length = np.minimum(np.sqrt(new_x**2 + new_y**2) / step_per_mm, _LENGTH_STEPS - 1).astype(np.intp)
@@ -197,7 +198,7 @@ def _grow(
         parents.append(np.concatenate([stay, row[kept]]).astype(np.int32))
         elements.append(np.concatenate([np.full(len(stay), -1), order[at[kept]]]).astype(np.int32))
         if len(x) > budget:
-            raise _TooMuch
+            raise _TooMuchError
     return _Sums(x, y, weight, sign, tuple(parents), tuple(elements))
 
 
@@ -205,7 +206,7 @@ def _how_many(offered: FloatArray, enough: FloatArray) -> NDArray[np.intp]:
     """How many of the weights (decreasing) times `enough` reach 1."""
     with np.errstate(divide="ignore"):
         least = np.where(enough > 0, 1.0 / enough, np.inf)
-    return np.searchsorted(-offered, -least * (1 - 1e-12), side="right")
+    return np.asarray(np.searchsorted(-offered, -least * (1 - 1e-12), side="right"))
 
 
 # --- the halves meet -----------------------------------------------------------------------
@@ -252,7 +253,7 @@ class _Cells:
             counts.append((high - low)[some])
         count = np.concatenate(counts)
         if int(count.sum()) > 16 * budget:
-            raise _TooMuch
+            raise _TooMuchError
         row, at = _spread(count)
         q = np.concatenate(query)[row]
         p = np.concatenate(lows)[row] + at
@@ -260,9 +261,7 @@ class _Cells:
         return q[close], back[p[close]]
 
 
-def near_pairs(
-    a: FloatArray, b: FloatArray, *, radius: float, budget: int = 1 << 24
-) -> tuple[IndexArray, IndexArray]:
+def near_pairs(a: FloatArray, b: FloatArray, *, radius: float, budget: int = 1 << 24) -> tuple[IndexArray, IndexArray]:
     """Rows (i, j) with |a[i] - b[j]| <= radius, for points (n, 2) and (m, 2)."""
     if not len(a) or not len(b):
         return np.zeros(0, dtype=np.intp), np.zeros(0, dtype=np.intp)
@@ -287,9 +286,7 @@ def _images(x: FloatArray, y: FloatArray, comb: FloatArray, radius: float) -> tu
     rows, xs, ys = [], [], []
     for m in range(-reach[0], reach[0] + 1):
         for n in range(-reach[1], reach[1] + 1):
-            inside = np.flatnonzero(
-                (np.abs(u[:, 0] + m) <= 0.5 + margin[0]) & (np.abs(u[:, 1] + n) <= 0.5 + margin[1])
-            )
+            inside = np.flatnonzero((np.abs(u[:, 0] + m) <= 0.5 + margin[0]) & (np.abs(u[:, 1] + n) <= 0.5 + margin[1]))
             moved = (u[inside] + (m, n)) @ comb
             rows.append(inside)
             xs.append(moved[:, 0])
@@ -329,11 +326,8 @@ def _meet(
         top = float(descending[at])
         if top * heaviest < tier.floor * (1 - 1e-12):
             break
-        if top * lightest >= tier.floor * _WEIGHT_BUCKET:
-            # every right sum is allowed down to this weight: no need for a smaller bucket
-            bottom = tier.floor / lightest
-        else:
-            bottom = top / _WEIGHT_BUCKET
+        # down to floor / lightest every right sum is allowed: no need for a smaller bucket
+        bottom = min(tier.floor / lightest, top / _WEIGHT_BUCKET)
         end = max(int(np.searchsorted(-descending, -bottom, side="right")), at + 1)
         bucket = by_weight[at:end]
         at = end
@@ -345,15 +339,15 @@ def _meet(
         )
         q = bucket[q]
         fx, fy = ax[q] + bx[p], ay[q] + by[p]
-        good = (weight_a[q] * weight_b[p] >= tier.floor * (1 - 1e-12)) & (fx**2 + fy**2 > tier.low_per_mm * abs(tier.low_per_mm))
+        inside = fx**2 + fy**2 > tier.low_per_mm * abs(tier.low_per_mm)
         # with nothing on the left the right alone decides which of k and -k is kept
-        good &= (left.sign[a[q]] != 0) | (right.sign[b[p]] > 0)
-        good = np.flatnonzero(good)
+        inside &= (left.sign[a[q]] != 0) | (right.sign[b[p]] > 0)
+        good = np.flatnonzero(inside & (weight_a[q] * weight_b[p] >= tier.floor * (1 - 1e-12)))
         rows_a.append(a[q[good]])
         rows_b.append(b[p[good]])
         frequency.append(np.column_stack([fx[good], fy[good]]))
         if sum(map(len, rows_a)) > budget:
-            raise _TooMuch
+            raise _TooMuchError
     if not rows_a:
         return empty, empty, np.zeros((0, 2))
     return np.concatenate(rows_a), np.concatenate(rows_b), np.concatenate(frequency)
@@ -411,7 +405,7 @@ def combinations(
                 step_per_mm=travel.step_per_mm, one_sign=False, budget=budget,
             )  # fmt: skip
             break
-        except _TooMuch:
+        except _TooMuchError:
             lowest = min(tier.floor for tier in tiers)
             tiers = [replace(tier, floor=max(tier.floor, 2.0 * lowest)) for tier in tiers]
     choices, frequency, weights = [], [], []
@@ -421,7 +415,7 @@ def combinations(
             try:
                 a, b, f = _meet(left, right, tier, pair, step_per_mm=travel.step_per_mm, comb=comb, budget=budget)
                 break
-            except _TooMuch:
+            except _TooMuchError:
                 tier = tiers[number] = replace(tier, floor=2.0 * tier.floor)
         choice = np.full((len(a), len(participants)), -1, dtype=np.int32)
         choice[:, halves[0]] = left.choices(a)
@@ -449,7 +443,8 @@ def _need(travel: Travel, table: FloatArray, tiers: Sequence[Tier], comb: FloatA
     """What a partial sum must weigh; a comb brings any sum back, so with one only the weight counts."""
     if comb is None:
         return travel.need(table, tiers)
-    shortest = float(np.sqrt(min((comb**2).sum(axis=1).min(), ((comb[0] + comb[1]) ** 2).sum(), ((comb[0] - comb[1]) ** 2).sum())))
+    near = np.array([comb[0], comb[1], comb[0] + comb[1], comb[0] - comb[1]])
+    shortest = float(np.hypot(near[:, 0], near[:, 1]).min())
     g = np.arange(_LENGTH_STEPS)
     # a sum must first get as far as the nearest comb point; g + 1: the sum may be that much longer
     to_go = np.stack([shortest - tier.high_per_mm - (g + 1) * travel.step_per_mm for tier in tiers])

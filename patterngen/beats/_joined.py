@@ -121,8 +121,10 @@ def _worst_rows(over: Superposition, hits: Hits, group: IndexArray, octaves: Ind
     return best_row
 
 
-def _aligned(part: Hits, amplitude: ComplexArray, starts: IndexArray, number: IndexArray) -> tuple[OrderArray, FloatArray]:
-    """Orders and frequencies of members, those that point against their group's first turned round (in place: conjugated)."""
+def _aligned(
+    part: Hits, amplitude: ComplexArray, starts: IndexArray, number: IndexArray
+) -> tuple[OrderArray, FloatArray]:
+    """Orders and frequencies, those that point against their group's first turned round (amplitudes in place)."""
     heads = part.frequency_per_mm[starts[:-1]][number]
     against = (part.frequency_per_mm * heads).sum(axis=1) < 0
     amplitude[against] = np.conj(amplitude[against])

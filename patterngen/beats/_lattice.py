@@ -52,7 +52,7 @@ def _reduced(rows: IntegerArray) -> IntegerArray:
         while len(active) > 1:
             active.sort(key=lambda row: abs(row[column]))
             head = active[0]
-            reduced = []
+            reduced: list[list[int]] = []
             for row in active[1:]:
                 factor = row[column] // head[column]
                 row = [a - factor * b for a, b in zip(row, head, strict=True)]
@@ -103,7 +103,8 @@ def modulus_extremes(amplitudes: Sequence[ComplexArray], orders: Sequence[NDArra
     stacked = np.concatenate(differences)
     turns, _ = coordinates(integer_basis(stacked), stacked)
     dependent: dict[int, list[tuple[int, IntegerArray]]] = {}
-    for i, own, difference in zip(many, np.split(turns, np.cumsum([len(d) for d in differences])), differences, strict=False):
+    pieces = np.split(turns, np.cumsum([len(d) for d in differences])[:-1])
+    for i, own, difference in zip(many, pieces, differences, strict=True):
         used = np.flatnonzero(own.any(axis=0))
         if len(own) - 1 <= len(used) and np.linalg.matrix_rank(own) == len(own) - 1:
             continue

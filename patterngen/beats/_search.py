@@ -44,10 +44,10 @@ def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search
     found: list[Hits] = []
     floors = [tier.floor for tier in tiers]
     for comb in (None, *over.combs):
-        hits, kept = _found(over, seen, tiers, comb)
+        hits, kept = in_tiers(over, seen, tiers, comb)
         found.append(hits)
         floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
-        found.append(_found(over, coloured, slow, comb)[0])
+        found.append(in_tiers(over, coloured, slow, comb)[0])
     near, far = _bounds(over, viewer, seen, tiers, floors)
     return Search(_upright(over, Hits.joined(found)), near, far)
 
@@ -90,7 +90,8 @@ def _widen(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> None:
     floors = np.array([tier.floor / JOINING for tier in tiers])
     while True:
         strong = (_beyond_each(over, shares, tiers) >= floors[:, None]).any(axis=0)
-        if not any([over.spectra[p].widen() for p in np.flatnonzero(strong)]):
+        widened = [over.spectra[p].widen() for p in np.flatnonzero(strong)]
+        if not any(widened):
             return
 
 
@@ -108,7 +109,7 @@ def _bounds(
     return near, far
 
 
-def _found(
+def in_tiers(
     over: Superposition, shares: Shares, tiers: Sequence[Tier], comb: Grid | None
 ) -> tuple[Hits, tuple[float, ...]]:
     """Combinations of the tiers (without any comb, or with this one), and the floors that were kept to."""

@@ -94,15 +94,14 @@ class Superposition:
     grids that sample.
     """
 
-    def __init__(
-        self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows
-    ) -> None:
+    def __init__(self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows) -> None:
         self.screens, self.grids, self.colours, self.rows = tuple(screens), tuple(grids), colours, rows
         self.combs = tuple(grid for grid in grids if grid.samples)
         if len(self.combs) > 1:
             names = ", ".join(grid.name for grid in self.combs)
             raise InputError(Fault("grid", "kind", "more than one grid samples the print", value=names, allowed="one"))
-        self.slots = tuple((part.name, len(part.frequencies_per_mm)) for part in (*screens, *grids))
+        parts: tuple[Screen | Grid, ...] = (*screens, *grids)
+        self.slots = tuple((part.name, len(part.frequencies_per_mm)) for part in parts)
         ends = np.cumsum([size for _, size in self.slots], dtype=int)
         self.columns: Mapping[str, slice] = {
             name: slice(int(end) - size, int(end)) for (name, size), end in zip(self.slots, ends, strict=True)

@@ -49,8 +49,8 @@ class PhaseMean:
             theta[0] = 0.0
             return theta, self.at(theta)
         size = _TORUS[self.rank]
-        axes = [np.arange(size) / size] * self.rank
-        theta = np.stack(np.meshgrid(*axes, indexing="ij"), axis=-1).reshape(-1, self.rank) if axes else np.zeros((1, 0))
+        theta = np.stack(np.unravel_index(np.arange(size**self.rank), (size,) * max(self.rank, 1)), axis=1) / size
+        theta = theta[:, : self.rank]
         xyz = np.empty((len(theta), 3))
         for channel in range(3):
             grid = np.zeros((size,) * self.rank, dtype=complex)
@@ -77,7 +77,8 @@ class PhaseMean:
     ) -> tuple[FloatArray, FloatArray, float]:
         """(Lab, Lab, CIEDE2000) of the two colours that differ most, darker first."""
         lab = colours.lab(xyz)
-        rows = np.unique(np.concatenate([np.argmax(lab @ _DIRECTIONS.T, axis=0), np.argmin(lab @ _DIRECTIONS.T, axis=0)]))
+        along = lab @ _DIRECTIONS.T
+        rows = np.unique(np.concatenate([np.argmax(along, axis=0), np.argmin(along, axis=0)]))
         i, j = np.triu_indices(len(rows), 1)
         if not len(i):
             return lab[rows[0]], lab[rows[0]], 0.0

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 
 from patterngen.beats._enumerate import Tier
@@ -40,7 +42,7 @@ def bands(viewer: Viewer, *, start_per_mm: float, strongest: float) -> list[Tier
     while edges[-1] < end:
         edges.append(edges[-1] * _RATIO)
     tiers = []
-    for low, high in zip(edges[:-1], edges[1:], strict=True):
+    for low, high in pairwise(edges):
         # the band that ends at 1 cycle/mm is judged by the coarse limit, 1 itself by the other
         inside = np.linspace(low, high, _SAMPLES)
         if high == 1.0:

@@ -38,7 +38,8 @@ def find_beats(
     """
     over = Superposition(screens, grids, colours, ToneRows.of(screens, overprints, sheet))
     near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
-    beats, found = JoinedBeats.none(over), ()
+    beats = JoinedBeats.none(over)
+    found: tuple[Balance, ...] = ()
     if over.participants >= 2 and len(over.rows.plate):
         result = search(over, viewer, diagonal_mm=sheet.diagonal_mm)
         near, far = result.bound_near, result.bound_far

@@ -1,4 +1,4 @@
-"""second way: beats of two and more gratings, computed apart from the program (closed forms, mpmath), to the digits shown."""
+"""second way: beats of two and more gratings, computed apart from the program, to the digits shown."""
 
 from __future__ import annotations
 
@@ -175,9 +175,7 @@ def test_worst_drift_is_the_worst_of_all_corners() -> None:
 
 def test_combinations_of_the_usual_set() -> None:
     """second way: 15/75/0/45, |k| <= 1, order <= 4, |F| < 0.30 f: 2 at zero, 4 + 4 at 0.261052 f, nothing else."""
-    vectors = [
-        np.array([[np.cos(a), np.sin(a)], [-np.sin(a), np.cos(a)]]) for a in np.deg2rad([15.0, 75.0, 0.0, 45.0])
-    ]
+    vectors = [np.array([[np.cos(a), np.sin(a)], [-np.sin(a), np.cos(a)]]) for a in np.deg2rad([15.0, 75.0, 0.0, 45.0])]
     orders = combinations_by_order(vectors, total=4, f_max_per_mm=0.30 - 1e-9)
     orders = orders[np.abs(orders).max(axis=1) <= 1]
     layers = (orders.reshape(-1, 4, 2) != 0).any(axis=2).sum(axis=1)
@@ -227,7 +225,7 @@ ROSETTE = {
 
 @pytest.mark.parametrize("tone", [0.2, 0.5])
 def test_white_of_the_rosette(tone: float) -> None:
-    """second way: (1-g)^3 - sum' (r J1(2 pi r rho) / rho)^3 cos 2 pi (m a + n b) for phases a, b of the two balances."""
+    """second way: (1-g)^3 - sum' (r J1(2 pi r rho) / rho)^3 cos 2 pi (m a + n b) for phases a, b."""
     # the coefficients are those of the screen itself, the orders those of its two balances
     reach = 60
     discs = screen("a", ruling_per_mm=150 / 25.4, angle_deg=15.0, tone=tone)
@@ -263,7 +261,7 @@ def test_rosette_is_found_by_itself() -> None:
 
 
 def test_both_axes_must_shift() -> None:
-    """second way: half a row of misregister on both axes, 84.667 um at 150 lpi, turns dot-centred into clear-centred."""
+    """second way: half a row of misregister on both axes, 84.667 um at 150 lpi, turns one rosette into the other."""
     screens = [
         screen(name, ruling_per_mm=150 / 25.4, angle_deg=angle, tone=0.5)
         for name, angle in (("a", 15.0), ("b", 75.0), ("c", 45.0))

@@ -169,4 +169,6 @@ def test_near_pairs(seed: int, radius: float) -> None:
     a, b = rng.uniform(-3, 3, (40, 2)), rng.normal(size=(60, 2))
     i, j = near_pairs(a, b, radius=radius)
     apart = np.hypot(*(a[:, None] - b[None, :]).transpose(2, 0, 1))
-    assert set(zip(i.tolist(), j.tolist(), strict=True)) == set(zip(*map(np.ndarray.tolist, np.nonzero(apart <= radius)), strict=True))
+    assert set(zip(i.tolist(), j.tolist(), strict=True)) == set(
+        zip(*map(np.ndarray.tolist, np.nonzero(apart <= radius)), strict=True)
+    )
