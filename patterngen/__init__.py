@@ -33,11 +33,11 @@ _HOME = {
 }
 
 __all__ = [
-    "__version__",
     "InputError",
     "Job",
     "MachineError",
     "Verdict",
+    "__version__",
     "build",
     "load",
     "new",

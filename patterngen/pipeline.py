@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass, replace
+from collections.abc import Callable
+from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Literal
 
@@ -106,7 +106,9 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         job=job.name,
         title=job.title,
         status=overall(findings),
-        screens=tuple(screen_facts(screen, textures[screen.name], extremes[screen.name], job.press) for screen in screens),
+        screens=tuple(
+            screen_facts(screen, textures[screen.name], extremes[screen.name], job.press) for screen in screens
+        ),
         beats=beats,
         balance=balance,
         findings=findings,
@@ -136,9 +138,7 @@ def write(proof: Proof, out: Path, *, keep_failed: bool, progress: Stage | None 
 
 def make_design(job: Job) -> Design:
     """Build the screens and grids of a fully derived job."""
-    screens = {
-        request.name: registry.load("patterngen.screens", request.kind).make(request) for request in job.screens
-    }
+    screens = {request.name: registry.load("patterngen.screens", request.kind).make(request) for request in job.screens}
     layers = tuple(
         Layer(ink, tuple(screens[request.name] for request in job.screens if request.ink == ink.name))
         for ink in job.inks
@@ -224,7 +224,7 @@ def _imager_cell(screen: Screen, press: Press) -> dict[str, Any] | None:
 
 
 def _refuse_choose(job: Job) -> None:
-    """"choose" is a question to the search, not a value that can be built."""
+    """ "choose" is a question to the search, not a value that can be built."""
     faults = [
         Fault(
             job.name,

@@ -31,7 +31,13 @@ def load(package: str, name: str) -> ModuleType:
     if name not in names(package):
         near = get_close_matches(name, names(package), n=1, cutoff=0.3)
         raise InputError(
-            Fault(package.rpartition(".")[2], "", f"nothing is called {name!r}", allowed=", ".join(names(package)), nearest=near[0] if near else "")
+            Fault(
+                package.rpartition(".")[2],
+                "",
+                f"nothing is called {name!r}",
+                allowed=", ".join(names(package)),
+                nearest=near[0] if near else "",
+            )
         )
     return import_module(f"{package}.{name.replace('-', '_')}")
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import signal
 import sys
@@ -95,17 +96,14 @@ def run() -> NoReturn:
 
 
 def _say(line: str) -> None:
-    try:
+    # where standard error itself is closed, the exit code is all that can still be told
+    with contextlib.suppress(OSError, ValueError):
         print(line, file=sys.stderr)
-    except (OSError, ValueError):
-        pass  # standard error itself is closed; the exit code is all that can still be told
 
 
 def _mute_standard_output() -> None:
-    try:
+    with contextlib.suppress(OSError, ValueError):
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-    except (OSError, ValueError):
-        pass
 
 
 def _leave(signum: int, frame: FrameType | None) -> None:

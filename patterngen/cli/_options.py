@@ -15,7 +15,9 @@ Function = TypeVar("Function", bound=Callable[..., Any])
 
 preset_argument = click.argument("preset", type=click.Path(path_type=str))
 
-json_option = click.option("--json", "as_json", is_flag=True, help="One JSON object on standard output, nothing else there.")
+json_option = click.option(
+    "--json", "as_json", is_flag=True, help="One JSON object on standard output, nothing else there."
+)
 quiet_option = click.option("--quiet", is_flag=True, help="No progress, no words; only the exit code (and --json).")
 set_option = click.option(
     "--set",

@@ -48,9 +48,7 @@ def _finding(finding: Finding, *, sourced: bool) -> list[str]:
         body.append(f"source: {finding.source.text} [{finding.source.standing}]")
     if finding.waiver:
         body.append(f"waived: {finding.waiver}")
-    wrapped = [
-        textwrap.fill(text, width=_WIDTH, initial_indent="      ", subsequent_indent="      ") for text in body
-    ]
+    wrapped = [textwrap.fill(text, width=_WIDTH, initial_indent="      ", subsequent_indent="      ") for text in body]
     return [head, *wrapped, ""]
 
 
@@ -63,8 +61,7 @@ def _counts(verdict: Verdict, shown: list[Finding]) -> str:
     beats = verdict.beats
     if len(beats):
         text += (
-            f". {len(beats)} beats listed, the strongest at "
-            f"{np.max(beats.visibility_far):.2f} times threshold from far"
+            f". {len(beats)} beats listed, the strongest at {np.max(beats.visibility_far):.2f} times threshold from far"
         )
     else:
         text += ". No beat is strong enough to be listed"

@@ -11,7 +11,9 @@ from patterngen.cli._options import Progress, job_options, print_json
 
 @click.command("build")
 @job_options
-@click.option("--out", default="out", show_default=True, metavar="DIR", help="Folder in which the job's folder is made.")
+@click.option(
+    "--out", default="out", show_default=True, metavar="DIR", help="Folder in which the job's folder is made."
+)
 @click.option("--keep-failed", is_flag=True, help="Write the printing files although a rule failed.")
 @click.option("--all", "everything", is_flag=True, help="Print every finding and every listed beat.")
 def command(

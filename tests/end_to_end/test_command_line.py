@@ -19,7 +19,12 @@ EXPECTED = {"carton-wrong-angle": 1}
 def run(*arguments: object, cwd: Path | None = None, **environment: str) -> subprocess.CompletedProcess[str]:
     return subprocess.run(
         [sys.executable, "-m", "patterngen", *map(str, arguments)],
-        capture_output=True, text=True, cwd=cwd, env={**os.environ, **environment}, timeout=120, check=False,
+        capture_output=True,
+        text=True,
+        cwd=cwd,
+        env={**os.environ, **environment},
+        timeout=120,
+        check=False,
     )
 
 

@@ -42,9 +42,7 @@ def test_every_call_in_readme_works(call: str, tmp_path: Path) -> None:
     (tmp_path / "mine.toml").write_text(patterngen.new("carton"), encoding="utf-8")
     words = [word.replace('"', "") for word in re.findall(r'(?:[^\s"]|"[^"]*")+', call)]
     words = [str(ROOT / word) if word.startswith("presets/") else word for word in words]
-    done = subprocess.run(
-        [sys.executable, "-m", *words], cwd=tmp_path, capture_output=True, text=True, check=False
-    )
+    done = subprocess.run([sys.executable, "-m", *words], cwd=tmp_path, capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr
 
 

@@ -51,15 +51,21 @@ def test_first_supercell_within_tolerance_and_the_one_that_always_is() -> None:
 @pytest.mark.parametrize(
     ("b", "a", "angle"),
     [
-        (3, 11, "15.25512"), (4, 15, "14.93142"), (11, 41, "15.01836"),
-        (15, 56, "14.99508"), (41, 153, "15.00132"), (56, 209, "14.99965"),
+        (3, 11, "15.25512"),
+        (4, 15, "14.93142"),
+        (11, 41, "15.01836"),
+        (15, 56, "14.99508"),
+        (41, 153, "15.00132"),
+        (56, 209, "14.99965"),
     ],
 )
 def test_convergents_of_the_tangent_of_15_degrees(b: int, a: int, angle: str) -> None:
     assert f"{PixelCell(a, b).angle_deg:.5f}" == angle
     # nearer to tan 15 than any other fraction of a smaller denominator
     wanted = Fraction(tan(radians(15)))
-    best = min((Fraction(p, q) for q in range(1, a) for p in (q * b // a, q * b // a + 1)), key=lambda f: abs(f - wanted))
+    best = min(
+        (Fraction(p, q) for q in range(1, a) for p in (q * b // a, q * b // a + 1)), key=lambda f: abs(f - wanted)
+    )
     assert abs(Fraction(b, a) - wanted) < abs(best - wanted)
 
 

@@ -102,7 +102,9 @@ def test_libraries_stay_in_their_rooms(path: Path) -> None:
 def loaded_by(code: str) -> set[str]:
     out = subprocess.run(
         [sys.executable, "-c", f"import sys\n{code}\nprint(' '.join(sys.modules))"],
-        capture_output=True, text=True, check=True,
+        capture_output=True,
+        text=True,
+        check=True,
     )
     return set(out.stdout.split())
 
