@@ -41,9 +41,8 @@ def _finding(finding: Finding, *, sourced: bool) -> list[str]:
         head += f"  ({finding.where})"
     body = [finding.message]
     if finding.measured is not None and finding.limit is not None and finding.margin is not None:
-        body.append(
-            f"measured {finding.measured:.4g}, limit {finding.limit:.4g}, margin {finding.margin:+.4g} {finding.unit}".rstrip()
-        )
+        figures = f"measured {finding.measured:.4g}, limit {finding.limit:.4g}, margin {finding.margin:+.4g}"
+        body.append(f"{figures} {finding.unit}".rstrip())
     if sourced:
         body.append(f"source: {finding.source.text} [{finding.source.standing}]")
     if finding.waiver:
