@@ -54,11 +54,11 @@ def write(design: Design) -> bytes:
     job = design.job
     page = page_of(job.sheet)
     with pikepdf.open(io.BytesIO(_envelope(job, page))) as pdf:
-        _clean(pdf)
+        marks = _clean(pdf)
         sheet = _SheetWriter(pdf, page, job.paper_lab)
         for layer in design.base.layers:
             sheet.draw(layer)
-        sheet.close()
+        sheet.close(marks)
         out = io.BytesIO()
         pdf.save(
             out,
@@ -98,31 +98,28 @@ def _envelope(job: Job, page: Page) -> bytes:
     return buffer.getvalue()
 
 
-def _clean(pdf: pikepdf.Pdf) -> None:
-    """Remove what the envelope brings along without need: a font that is not embedded, empty entries."""
+def _clean(pdf: pikepdf.Pdf) -> list[pikepdf.Stream]:
+    """Take out what the envelope brings along without need; its content that stays (the marks), if any."""
     page = pdf.pages[0]
     kept, in_text = [], False
     for instruction in pikepdf.parse_content_stream(page):
         operator = str(instruction.operator)
+        # the envelope sets a font, which is not embedded, although it writes no text
         in_text = in_text or operator == "BT"
         if not in_text:
             kept.append(instruction)
         in_text = in_text and operator != "ET"
-    if any(str(instruction.operator) in ("S", "f") for instruction in kept):
-        page.Contents = _stream(pdf, b"q\n" + pikepdf.unparse_content_stream(kept) + b"\nQ\n")
-    else:
-        page.Contents = _stream(pdf, b"")
-    for key in ("/Font", "/ProcSet"):
-        if key in page.Resources:
-            del page.Resources[key]
-    if "/Trans" in page:
-        del page["/Trans"]
-    for key in ("/Author", "/Subject", "/Keywords"):
-        if key in pdf.docinfo:
-            del pdf.docinfo[key]
-    for key in ("/PageMode", "/Outlines"):
-        if key in pdf.Root:
-            del pdf.Root[key]
+    for holder, keys in (
+        (page.Resources, ("/Font", "/ProcSet")),
+        (page.obj, ("/Trans",)),
+        (pdf.docinfo, ("/Author", "/Subject", "/Keywords")),
+        (pdf.Root, ("/PageMode", "/Outlines")),
+    ):
+        for key in keys:
+            if key in holder:
+                del holder[key]
+    drawn = any(str(instruction.operator) == "S" for instruction in kept)
+    return [_stream(pdf, b"q\n" + pikepdf.unparse_content_stream(kept) + b"\nQ\n")] if drawn else []
 
 
 def _stream(pdf: pikepdf.Pdf, text: bytes) -> pikepdf.Stream:
@@ -158,15 +155,15 @@ class _SheetWriter:
         head = b"/OC /Layer%d BDC\nq\n/Over gs /Ink%d cs 1 scn\n" % (k, k)
         for screen in layer.screens:
             for batch in screen.shapes():
+                if batch.total == 0:
+                    continue
                 paint = self._stamps(batch) if isinstance(batch, Stamps) else self._polygons(batch)
                 for text in paint:
                     self.streams.append(_stream(self.pdf, head + text + b"Q\nEMC\n"))
 
-    def close(self) -> None:
-        """Hand the streams and layers to the page."""
-        page = self.pdf.pages[0]
-        marks = page.Contents
-        page.Contents = Array([*self.streams, marks])
+    def close(self, marks: list[pikepdf.Stream]) -> None:
+        """Hand the streams and layers to the page, the marks last and on no layer."""
+        self.pdf.pages[0].Contents = Array([*self.streams, *marks])
         self.pdf.Root.OCProperties = Dictionary(
             OCGs=Array(self.groups),
             D=Dictionary(Name="Inks", BaseState=Name.ON, Order=Array(self.groups)),
@@ -180,8 +177,6 @@ class _SheetWriter:
 
     def _polygons(self, polygons: Polygons) -> Iterator[bytes]:
         """Loose polygons as plain paths."""
-        if polygons.total == 0:
-            return
         figures = whole(polygons)
         shape: NDArray[np.int64] = np.cumsum(figures.shape_end) - figures.shape_end
         paint = figures.shape_end & ((shape + 1) % _SHAPES_A_FILL == 0)
