@@ -19,9 +19,9 @@ def report(verdict: Verdict, *, everything: bool) -> str:
     """What a busy person reads first; the rest with `everything`."""
     lines = [f"{strong(_WORDS[verdict.status], _COLOUR[verdict.status])}  {verdict.job}: {verdict.title}", ""]
     shown = [f for f in _by_weight(verdict.findings) if everything or f.status in ("fail", "warn", "waived")]
-    for finding, following in zip(shown, [*shown[1:], None], strict=True):
+    for place, finding in enumerate(shown):
         # a source that several findings in a row share is told once, under the last of them
-        told_below = following is not None and following.source == finding.source
+        told_below = any(following.source == finding.source for following in shown[place + 1 : place + 2])
         lines += _finding(finding, sourced=not told_below)
     lines.append(_counts(verdict, shown))
     if everything:
