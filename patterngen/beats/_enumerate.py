@@ -227,7 +227,7 @@ class _Cells:
         self.x, self.y = x[self.order], y[self.order]
 
     def _index(self, v: FloatArray, v0: float) -> IndexArray:
-        return ((v - v0) / self.cell + 1.0).astype(np.intp)
+        return np.asarray((v - v0) / self.cell + 1.0).astype(np.intp)
 
     def pairs(
         self, x: FloatArray, y: FloatArray, *, radius: float, chosen: NDArray[np.bool_] | None, budget: int

@@ -95,7 +95,7 @@ def join(over: Superposition, hits: Hits, viewer: Viewer, *, tolerance_per_mm: f
     swing[long] = crest_to_trough(over.colours, mean[long], _real(amplitude[strongest[long]]) * power[long])
 
     kept = np.flatnonzero(listed[chosen] | (np.nan_to_num(swing) >= _COLOUR_LISTED))
-    contrasts = amplitude[:, 1] * michelson(np.ones(len(number)), mean[number, 1])
+    contrasts = (amplitude[:, 1] * michelson(np.ones(len(number)), mean[number, 1])).astype(complex)
     pieces = [slice(int(starts[g]), int(starts[g + 1])) for g in kept]
     extremes = modulus_extremes([contrasts[p] for p in pieces], [orders[p] for p in pieces])
     head = strongest[kept]

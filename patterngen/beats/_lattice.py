@@ -13,8 +13,10 @@ from patterngen.model.screen import ComplexArray
 IntegerArray = NDArray[np.int64]
 
 _TORUS = {1: 256, 2: 48, 3: 20}
-_REFINE = 9
-_BATCH = 48
+"""Points an axis of the first search over so many free phases."""
+_REFINE = 16
+_STARTS = 4
+_BATCH = 32
 
 
 def integer_basis(vectors: NDArray[np.integer]) -> IntegerArray:
@@ -135,22 +137,35 @@ def _search(amplitudes: Sequence[ComplexArray], turns: Sequence[IntegerArray]) -
     grid = np.zeros((groups,) + (size,) * rank, dtype=complex)
     place = np.broadcast_to(np.arange(groups)[:, None], (groups, longest))
     np.add.at(grid, (place, *np.moveaxis(turn % size, -1, 0)), amplitude)
-    modulus = np.abs(np.fft.ifftn(grid, axes=tuple(range(1, rank + 1)), norm="forward")).reshape(groups, -1)
+    axes = tuple(range(1, rank + 1))
+    modulus = np.abs(np.fft.ifftn(grid, axes=axes, norm="forward"))
     around = np.stack(np.meshgrid(*[[-1.0, 0.0, 1.0]] * rank, indexing="ij"), axis=-1).reshape(-1, rank)
     out = np.empty((groups, 2))
-    every = np.arange(groups)
     for end, sign in enumerate((-1.0, 1.0)):
-        first = np.argmax(sign * modulus, axis=1)
-        at = np.stack(np.unravel_index(first, (size,) * rank), axis=1) / size
-        best = modulus[every, first]
-        step = 0.5 / size
+        at = _local_tops(sign * modulus, axes) / size
+        best = np.full(at.shape[:2], -np.inf)
+        step = np.full(at.shape[:2], 0.5 / size)
         for _ in range(_REFINE):
-            trial = at[:, None, :] + step * around
-            phase = np.exp(2j * np.pi * np.einsum("gtr,gjr->gtj", trial, turn))
-            value = np.abs(np.einsum("gtj,gj->gt", phase, amplitude))
-            k = np.argmax(sign * value, axis=1)
-            better = sign * value[every, k] > sign * best
-            at[better], best[better] = trial[every, k][better], value[every, k][better]
-            step *= 0.5
-        out[:, end] = best
+            trial = at[:, :, None, :] + step[:, :, None, None] * around
+            phase = np.exp(2j * np.pi * np.einsum("gstr,gjr->gstj", trial, turn))
+            value = sign * np.abs(np.einsum("gstj,gj->gst", phase, amplitude))
+            k = np.argmax(value, axis=2)[:, :, None]
+            top = np.take_along_axis(value, k, axis=2)[:, :, 0]
+            moved = np.take_along_axis(trial, k[:, :, :, None], axis=2)[:, :, 0]
+            # a step is halved where it leads no further
+            better = top > best + 1e-12
+            at, best = np.where(better[:, :, None], moved, at), np.maximum(top, best)
+            step = np.where(better & (k[:, :, 0] != len(around) // 2), step, 0.5 * step)
+        out[:, end] = sign * best.max(axis=1)
     return out
+
+
+def _local_tops(value: FloatArray, axes: tuple[int, ...]) -> IntegerArray:
+    """(groups, starts, rank) places of the highest points that no neighbour along an axis exceeds."""
+    top = np.ones(value.shape, dtype=bool)
+    for axis in axes:
+        for way in (-1, 1):
+            top &= value >= np.roll(value, way, axis=axis)
+    flat = np.where(top, value, -np.inf).reshape(len(value), -1)
+    first = np.argpartition(-flat, _STARTS, axis=1)[:, :_STARTS]
+    return np.stack(np.unravel_index(first, value.shape[1:]), axis=-1)

@@ -39,10 +39,7 @@ class ToneRows:
     def of(cls, screens: Sequence[Screen], overprints: Sequence[Overprint], sheet: SheetSize) -> ToneRows:
         """The rows of all octaves of windows up to the sheet's diagonal."""
         last = int(octave(np.array([sheet.diagonal_mm]))[0])
-        found = [
-            tones_together(screens, overprints, sheet, window_mm=window_mm(number)).reshape(-1, len(screens))
-            for number in range(last + 1)
-        ]
+        found = [tones_together(screens, overprints, sheet, window_mm=window_mm(number)) for number in range(last + 1)]
         plate, place = np.unique(np.concatenate(found), axis=0, return_inverse=True)
         place = place.ravel()
         ends = np.cumsum([len(rows) for rows in found])

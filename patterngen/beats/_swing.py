@@ -9,7 +9,7 @@ from patterngen.model.lattice import FloatArray
 from patterngen.model.screen import ComplexArray
 from patterngen.model.seeing import InkColours
 
-_TORUS = {0: 1, 1: 240, 2: 60, 3: 20, 4: 10}
+_TORUS = {1: 240, 2: 60, 3: 20, 4: 10}
 _SCATTERED = 20_000
 _REFINE = 8
 
@@ -49,8 +49,7 @@ class PhaseMean:
             theta[0] = 0.0
             return theta, self.at(theta)
         size = _TORUS[self.rank]
-        theta = np.stack(np.unravel_index(np.arange(size**self.rank), (size,) * max(self.rank, 1)), axis=1) / size
-        theta = theta[:, : self.rank]
+        theta = np.stack(np.unravel_index(np.arange(size**self.rank), (size,) * self.rank), axis=1) / size
         xyz = np.empty((len(theta), 3))
         for channel in range(3):
             grid = np.zeros((size,) * self.rank, dtype=complex)
@@ -100,8 +99,6 @@ class PhaseMean:
 
     def _around(self) -> list[FloatArray]:
         """Ever smaller neighbourhoods on the torus."""
-        if not self.rank:
-            return []
         if self.rank <= 3:
             box = np.stack(np.meshgrid(*[[-1.0, 0.0, 1.0]] * self.rank, indexing="ij"), axis=-1)
             around = box.reshape(-1, self.rank)

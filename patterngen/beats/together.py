@@ -15,7 +15,7 @@ from patterngen.model.screen import Screen
 _SAMPLES_A_SIDE = 320
 _SAMPLES_A_WINDOW = 4
 _ROWS = 200
-_LEVELS = (64, 48, 32, 24, 16, 12, 8, 6, 4)
+_LEVELS = (32, 24, 16, 12, 8, 6, 4)
 
 
 def tones_together(

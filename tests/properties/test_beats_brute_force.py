@@ -141,7 +141,7 @@ def test_spectrum_is_that_of_the_print(seed: int) -> None:
     assert np.sqrt((nearer**2).mean()) < 1e-4
 
 
-@pytest.mark.parametrize("seed", [3, 9, 15])
+@pytest.mark.parametrize("seed", [3, 12, 21])
 def test_contrast_is_that_of_the_print(seed: int) -> None:
     """second way: discs that never repeat, a window of 10 mm: contrast within 1 % + 1e-4, and gone beside it."""
     screens = random_set(seed, shapes=("simpledot",))
