@@ -45,21 +45,18 @@ def chords(contour: Contour, *, steps_mm: FloatArray, sagitta_mm: float = SAGITT
 
 def _sampled(contour: Contour, steps_mm: FloatArray, sagitta_mm: float) -> tuple[FloatArray, FloatArray]:
     """Corners (n, 2) on the curve, and how far each should move outwards (n, 2)."""
-    corner: list[FloatArray] = []
-    height: list[FloatArray] = []
-    here = contour.start
-    for bend, straight in zip(contour.bends, contour.straight, strict=True):
-        points = np.concatenate([here[None, :], bend])
-        n = 1
-        if not straight:
-            second = np.abs(np.diff(points, n=2, axis=0) @ steps_mm)
-            n = max(1, int(np.ceil(np.sqrt(0.75 * np.hypot(second[:, 0], second[:, 1]).max() / sagitta_mm))))
-        u = np.arange(n + 1)[:, None] / n
-        at = _point(points, u)
-        corner.append(at[:-1])
-        height.append(np.zeros((1, 2)) if straight else _point(points, u[:-1] + 0.5 / n) - 0.5 * (at[:-1] + at[1:]))
-        here = bend[2]
-    ring, over = np.concatenate(corner), np.concatenate(height)
+    starts = np.concatenate([contour.start[None, :], contour.bends[:-1, 2]])
+    points = np.concatenate([starts[:, None, :], contour.bends], axis=1)
+    second = np.abs(np.diff(points, n=2, axis=1) @ steps_mm)
+    bulge_mm = np.where(contour.straight, 0.0, np.hypot(second[..., 0], second[..., 1]).max(axis=1))
+    pieces = np.maximum(np.ceil(np.sqrt(0.75 * bulge_mm / sagitta_mm)), 1).astype(np.int64)
+    of = np.repeat(np.arange(len(pieces)), pieces)
+    along = np.arange(len(of)) - np.repeat(np.cumsum(pieces) - pieces, pieces)
+    step = 1.0 / pieces[of]
+    ring = _point(points[of], along * step)
+    chord_middle = 0.5 * (ring + _point(points[of], (along + 1) * step))
+    over = _point(points[of], (along + 0.5) * step) - chord_middle
+    over[contour.straight[of]] = 0.0
     before = np.roll(over, 1, axis=0)
     free = np.any(over != 0, axis=1) & np.any(before != 0, axis=1)
     return ring, np.where(free[:, None], (over + before) / 3, 0.0)
@@ -81,8 +78,10 @@ def _growth(ring: FloatArray, outward: FloatArray, missing: float) -> float:
 
 
 def _point(corners: FloatArray, u: FloatArray) -> FloatArray:
-    a, b, c, d = corners
-    return np.asarray((1 - u) ** 3 * a + 3 * (1 - u) ** 2 * u * b + 3 * (1 - u) * u**2 * c + u**3 * d)
+    """Points (n, 2) of cubics with corners (n, 4, 2) at parameters (n,)."""
+    v, w = u[:, None], 1 - u[:, None]
+    a, b, c, d = np.moveaxis(corners, 1, 0)
+    return np.asarray(w**3 * a + 3 * w**2 * v * b + 3 * w * v**2 * c + v**3 * d)
 
 
 def _area(ring: FloatArray) -> float:

@@ -6,9 +6,7 @@ must find the same places and the same area.
 
 from __future__ import annotations
 
-import statistics
-import time
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 
 import numpy as np
 import shapely
@@ -19,8 +17,7 @@ from patterngen.model.lattice import FloatArray
 from patterngen.model.shapes import Polygons
 from patterngen.screens import dots, lines
 from patterngen.screens._ground import Ground, _ranges
-
-ROUNDS = 5
+from tests.bench._timing import median_seconds
 
 
 def ring(count: int, *, radius_mm: float, seed: int) -> FloatArray:
@@ -33,15 +30,6 @@ def ring(count: int, *, radius_mm: float, seed: int) -> FloatArray:
 
 def request(kind: str, tone: ToneField, area: Area) -> ScreenRequest:
     return ScreenRequest("a", "Slate", kind, None, 150 / 25.4, 15.0, tone, area, (0.0, 0.0), Gain())
-
-
-def median_seconds(work: Callable[[], object], rounds: int = ROUNDS) -> float:
-    times = []
-    for _ in range(rounds):
-        start = time.perf_counter()
-        work()
-        times.append(time.perf_counter() - start)
-    return statistics.median(times)
 
 
 def run() -> Iterator[tuple[str, str, str]]:
