@@ -77,8 +77,8 @@ def _groups(over: Superposition, orders: OrderArray) -> list[BoolArray]:
         own = (taking == members).all(axis=1)
         smaller = ~(taking & ~members).any(axis=1) & ~own
         if smaller.any():
-            _, explained = coordinates(integer_basis(orders[smaller]), orders[own])
-            if explained.all():
+            known = np.linalg.matrix_rank(orders[smaller])
+            if np.linalg.matrix_rank(orders[smaller | own]) == known:
                 continue
         primitive.append(members)
     together: list[BoolArray] = []
@@ -98,8 +98,9 @@ def _weigh(
     grids = any(grid.name in names for grid in over.grids)
     if exact and not grids and len({screen.ink for screen in over.screens if screen.name in names}) < 2:
         return None  # screens of one plate never move against each other
-    basis = integer_basis(hits.orders)
-    hits = _followed(over, hits, basis, slowest_per_mm)
+    basis = _free_phases(hits.orders)
+    if len(basis) in _MULTIPLES:
+        hits = _followed(over, hits, basis, slowest_per_mm)
     best = None
     for amplitude, hits_kept, row in _promising(over, hits, len(basis)):
         turns, _ = coordinates(basis, hits_kept.orders)
@@ -148,6 +149,16 @@ def _weigh(
     return line, balance
 
 
+def _free_phases(orders: OrderArray) -> IntegerArray:
+    """Rows of which all orders are whole combinations, each with a phase of its own.
+
+    A basis while that is small; of many combinations every axis that takes part stands for itself.
+    """
+    if np.linalg.matrix_rank(orders) <= max(_MULTIPLES):
+        return integer_basis(orders)
+    return np.eye(orders.shape[1], dtype=np.int64)[orders.any(axis=0)]
+
+
 def _three(lab: FloatArray) -> tuple[float, float, float]:
     return float(lab[0]), float(lab[1]), float(lab[2])
 
@@ -175,8 +186,6 @@ def _promising(over: Superposition, hits: Hits, rank: int) -> list[tuple[Complex
 def _followed(over: Superposition, hits: Hits, basis: IntegerArray, slowest_per_mm: float) -> Hits:
     """The hits and every other small integer combination of their basis that is as slow, within reach."""
     rank = len(basis)
-    if rank not in _MULTIPLES:
-        return hits
     axis = np.arange(-_MULTIPLES[rank], _MULTIPLES[rank] + 1)
     turns = np.stack(np.meshgrid(*[axis] * rank, indexing="ij"), axis=-1).reshape(-1, rank)
     known, _ = coordinates(basis, hits.orders)

@@ -6,12 +6,16 @@ part in a beat with R1 - R0.  Done axis by axis this is n 2^n work for all 2^n s
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 
 from patterngen.model.lattice import FloatArray
 
 MaskArray = NDArray[np.int64]
+
+_LEAST = 1e-12
 
 
 def all_differences(primaries: FloatArray, tones: FloatArray) -> FloatArray:
@@ -78,19 +82,36 @@ class Strengths:
         out[(sets & ~covered) != 0] = 0.0
         return np.asarray(out)
 
-    def contrasts(self, channels: tuple[int, ...]) -> FloatArray:
-        """(2^n,) the largest of 2 |strength| / mean over all rows and the given channels."""
-        best = np.zeros(2**self.screens)
+    def shares(self, channels: tuple[int, ...]) -> Shares:
+        """Bounds on 2 |strength| / mean, the largest of the given channels of XYZ, row by row."""
+        largest = np.zeros(2**self.screens)
+        each = np.zeros((self.rows, self.screens))
+        whole = 2.0
         for group, (table, active) in enumerate(zip(self._tables, self._active, strict=True)):
             members = np.flatnonzero(self._place[:, 0] == group)
-            mean = np.maximum(self.mean[members], 1e-12)
-            relative = 2.0 * np.abs(table[:, :, channels]) / mean[:, None, channels]
-            relative[:, 0, :] = 2.0  # the mean itself, which grids alone can modulate
+            mean = np.maximum(self.mean[members], _LEAST)
+            relative = (2.0 * np.abs(table[:, :, channels]) / mean[:, None, channels]).max(axis=2)
+            relative[:, 0] = 2.0  # the mean itself, which grids alone can modulate
             sets = np.zeros(1, dtype=np.int64)
             for screen in active:
                 sets = np.concatenate([sets, sets | (1 << screen)])
-            best[sets] = np.maximum(best[sets], relative.max(axis=(0, 2)))
-        return best
+            largest[sets] = np.maximum(largest[sets], relative.max(axis=0))
+            for row, contrasts in zip(members, relative, strict=True):
+                row_whole, each[row, active] = product_bound(contrasts)
+                whole = max(whole, row_whole)
+        return Shares(whole, each, largest)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Shares:
+    """In a row of tones the contrast of a set S is at most `whole` times the product of its members' shares.
+
+    `each` (rows, screens); `largest` (2^screens,) is the true factor of each set in the row where it is largest.
+    """
+
+    whole: float
+    each: FloatArray
+    largest: FloatArray
 
 
 def product_bound(contrasts: FloatArray) -> tuple[float, FloatArray]:
@@ -101,21 +122,20 @@ def product_bound(contrasts: FloatArray) -> tuple[float, FloatArray]:
     """
     n = len(contrasts).bit_length() - 1
     whole = float(contrasts[0])
-    each = np.array([max(float(contrasts[1 << i]) / whole, 1e-9) for i in range(n)])
-    sets = np.arange(len(contrasts))
+    each = np.maximum(contrasts[1 << np.arange(n)] / whole, 1e-9)
     for _ in range(40 * n):
-        bound = np.full(1, whole)
-        for share in each:
-            bound = np.concatenate([bound, bound * share])
-        excess = contrasts / bound
+        excess = contrasts / _products(whole, each)
         worst = int(np.argmax(excess))
-        if excess[worst] <= 1.0 + 1e-12:
+        if worst == 0 or excess[worst] <= 1.0 + 1e-12:
             return whole * (1.0 + 1e-12), each
-        members = [i for i in range(n) if (sets[worst] >> i) & 1]
-        if not members:
-            break
+        members = [i for i in range(n) if (worst >> i) & 1]
         each[members] *= excess[worst] ** (1.0 / len(members))
-    bound = np.full(1, whole)
+    return whole * float((contrasts / _products(whole, each)).max()) * (1.0 + 1e-12), each
+
+
+def _products(whole: float, each: FloatArray) -> FloatArray:
+    """(2^n,) whole times the product of each[i] over the bits of the index."""
+    out = np.full(1, whole)
     for share in each:
-        bound = np.concatenate([bound, bound * share])
-    return whole * float((contrasts / bound).max()) * (1.0 + 1e-12), each
+        out = np.concatenate([out, out * share])
+    return out

@@ -15,7 +15,8 @@ IntegerArray = NDArray[np.int64]
 _TORUS = {1: 256, 2: 48, 3: 20}
 """Points an axis of the first search over so many free phases."""
 _REFINE = 16
-_STARTS = 4
+_STARTS = 6
+_SHARED_RANK = 4
 _BATCH = 32
 
 
@@ -90,31 +91,38 @@ def modulus_extremes(amplitudes: Sequence[ComplexArray], orders: Sequence[NDArra
     Component j of a group has amplitude a_j and turns by k_j . phi, with one free phase phi
     for every axis of every participant.  Independent differences of orders turn freely: the
     largest is the sum of moduli and the least that of a polygon (the longest side less all
-    others, or 0).  Up to three dependent phases are searched on a grid and refined; with more
-    the polygon's bounds are given, which the truth cannot exceed.
+    others, or 0).  Up to three dependent phases are searched on a grid and refined (the least
+    right to a hundredth of the sum of moduli, the largest to a thousandth); with more the
+    polygon's bounds are given, which the truth cannot exceed.
     """
     out = np.empty((len(amplitudes), 2))
     for i, amplitude in enumerate(amplitudes):
         moduli = np.abs(amplitude)
         total = float(moduli.sum())
         out[i] = max(0.0, 2.0 * float(moduli.max()) - total), total
-    many = [i for i, amplitude in enumerate(amplitudes) if len(amplitude) > 2]
-    if not many:
-        return out
-    differences = [orders[i].astype(np.int64) - orders[i][0] for i in many]
-    stacked = np.concatenate(differences)
-    turns, _ = coordinates(integer_basis(stacked), stacked)
     dependent: dict[int, list[tuple[int, IntegerArray]]] = {}
-    pieces = np.split(turns, np.cumsum([len(d) for d in differences])[:-1])
-    for i, own, difference in zip(many, pieces, differences, strict=True):
-        used = np.flatnonzero(own.any(axis=0))
-        if len(own) - 1 <= len(used) and np.linalg.matrix_rank(own) == len(own) - 1:
-            continue
-        if len(used) > max(_TORUS):
-            own, _ = coordinates(integer_basis(difference), difference)
-            used = np.arange(own.shape[1])
-        if len(used) <= max(_TORUS):
-            dependent.setdefault(len(used), []).append((i, own[:, used]))
+    small: list[tuple[int, IntegerArray]] = []
+    for i, amplitude in enumerate(amplitudes):
+        if len(amplitude) > 2:
+            difference = orders[i][1:].astype(np.int64) - orders[i][0]
+            rank = np.linalg.matrix_rank(difference)
+            if rank <= min(max(_TORUS), len(difference) - 1):
+                small.append((i, difference))
+    if not small:
+        return out
+    # one basis for all where that is small too: on the usual sets all differences are balances
+    stacked = np.concatenate([difference for _, difference in small])
+    shared = integer_basis(stacked) if np.linalg.matrix_rank(stacked) <= _SHARED_RANK else None
+    for i, difference in small:
+        basis = shared
+        if basis is not None:
+            turns, _ = coordinates(basis, difference)
+            used = np.flatnonzero(turns.any(axis=0))
+        if basis is None or len(used) > max(_TORUS):
+            turns, _ = coordinates(integer_basis(difference), difference)
+            used = np.arange(turns.shape[1])
+        first = np.zeros((1, len(used)), dtype=np.int64)
+        dependent.setdefault(len(used), []).append((i, np.concatenate([first, turns[:, used]])))
     for found in dependent.values():
         # like sizes together, so that little is padded
         found.sort(key=lambda item: len(item[1]))

@@ -7,8 +7,9 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from patterngen.beats._differences import Shares
 from patterngen.beats._enumerate import Candidates, Tier, Travel, combinations
-from patterngen.beats._superposition import Hits, Shares, Superposition
+from patterngen.beats._superposition import Hits, Superposition
 from patterngen.beats._tiers import COARSE_PER_MM, JOINING, LISTED_FAR, LISTED_NEAR, bands
 from patterngen.model.lattice import FloatArray
 from patterngen.model.screen import Grid
@@ -16,6 +17,9 @@ from patterngen.model.seeing import Viewer
 
 _COLOUR_FLOOR = 2e-3
 """Relative amplitude in any of X, Y, Z from which slow beats and balance are looked at."""
+
+_LUMINANCE = (1,)
+_ANY = (0, 1, 2)
 
 _UP = 1e-9
 """Frequencies (cycles/mm) this near to the axis count as on it when k and -k are told apart."""
@@ -36,24 +40,23 @@ def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search
     Reaches are widened until no combination with an order beyond them can be strong enough
     to be listed, or to a cap; what is left then is in the bounds.
     """
-    seen = over.shares((1,))
+    seen = over.shares(_LUMINANCE)
     tiers = bands(viewer, start_per_mm=1.0 / diagonal_mm, strongest=_strongest(over, seen))
     _widen(over, seen, tiers)
-    coloured = over.shares((0, 1, 2))
     slow = [Tier(-1.0, COARSE_PER_MM, _COLOUR_FLOOR)]
     found: list[Hits] = []
     floors = [tier.floor for tier in tiers]
     for comb in (None, *over.combs):
-        hits, kept = in_tiers(over, seen, tiers, comb)
+        hits, kept = in_tiers(over, _LUMINANCE, tiers, comb)
         found.append(hits)
         floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
-        found.append(in_tiers(over, coloured, slow, comb)[0])
+        found.append(in_tiers(over, _ANY, slow, comb)[0])
     near, far = _bounds(over, viewer, seen, tiers, floors)
     return Search(_upright(over, Hits.joined(found)), near, far)
 
 
 def _candidates(over: Superposition, shares: Shares) -> list[Candidates]:
-    return [s.candidates(float(share)) for s, share in zip(over.spectra, shares.each, strict=True)]
+    return [s.candidates(share) for s, share in zip(over.spectra, shares.each.T, strict=True)]
 
 
 def _strongest(over: Superposition, shares: Shares) -> float:
@@ -110,9 +113,13 @@ def _bounds(
 
 
 def in_tiers(
-    over: Superposition, shares: Shares, tiers: Sequence[Tier], comb: Grid | None
+    over: Superposition, channels: tuple[int, ...], tiers: Sequence[Tier], comb: Grid | None
 ) -> tuple[Hits, tuple[float, ...]]:
-    """Combinations of the tiers (without any comb, or with this one), and the floors that were kept to."""
+    """Combinations of the tiers (without any comb, or with this one), and the floors that were kept to.
+
+    A tier's floor is of the contrast in the strongest of the channels of XYZ.
+    """
+    shares = over.shares(channels)
     lists = _candidates(over, shares)
     scaled = [replace(tier, floor=tier.floor / shares.whole) for tier in tiers]
     if comb is None and tiers:
@@ -120,17 +127,17 @@ def in_tiers(
         lists = [_useful(c, travel, rest, scaled) for c, rest in zip(lists, travel.all_but(), strict=True)]
     found = combinations(lists, scaled, comb=None if comb is None else _plane(comb.frequencies_per_mm))
     orders = np.zeros((len(found.choice), over.width), dtype=np.int32)
-    weight = found.weight.copy()
     for p, candidates in enumerate(lists):
         part = np.flatnonzero(found.choice[:, p] >= 0)
         orders[part, over.columns[over.spectra[p].name]] = candidates.orders[found.choice[part, p]]
-        weight[part] /= shares.each[p]
     if comb is not None and found.comb_order is not None:
         orders[:, over.columns[comb.name]] = found.comb_order[:, : len(comb.frequencies_per_mm)]
     hits = over.hits(orders, found.frequency_per_mm)
-    # shares may bound a set of screens from above: its true factor decides
     floors = tuple(floor * shares.whole for floor in found.floors)
-    strong = weight * shares.contrasts[hits.sets] >= min(floors, default=0.0) * (1.0 - 1e-9)
+    # weights only bound contrast; the true one in every row of tones decides
+    strong = np.zeros(len(hits), dtype=bool)
+    for row in range(len(over.rows.plate)):
+        strong |= over.contrasts(hits, row, channels=channels) >= min(floors, default=0.0) * (1.0 - 1e-9)
     return hits.take(strong), floors
 
 

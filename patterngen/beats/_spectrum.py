@@ -12,8 +12,11 @@ from patterngen.model.screen import ComplexArray, Grid, Screen
 
 _FIRST_REACH = {1: 64, 2: 40}
 _LAST_REACH = {1: 1024, 2: 80}
-_TAIL_RADII = (1.0, 3.0)
+_TAIL_RADII = (1.0, 4.0)
 """Where beyond the reach tails are asked for, in parts of the first order that is not worked out."""
+
+_WIDE_LEVELS = 8
+"""With more tones than these (pictures) a reach is not widened: each costs as much again."""
 
 _NOTHING = 1e-15
 
@@ -36,7 +39,7 @@ class Spectrum:
         self._levels, self._level_of_row = np.unique(tones, return_inverse=True)
         stretch = np.linalg.svd(self.frequencies_per_mm, compute_uv=False)
         self.shortest_per_mm, self.longest_per_mm = float(stretch[-1]), float(stretch[0])
-        self._bounds: dict[float, float] = {}
+        self._bounds: dict[float, FloatArray] = {}
         self._work_out(_FIRST_REACH[self.axes])
 
     @classmethod
@@ -60,8 +63,8 @@ class Spectrum:
         )  # fmt: skip
 
     def widen(self) -> bool:
-        """Double the reach; False when it is at its cap already."""
-        if self.reach >= _LAST_REACH[self.axes]:
+        """Double the reach; False when it is at its cap already, or too many tones occur."""
+        if self.reach >= _LAST_REACH[self.axes] or len(self._levels) > _WIDE_LEVELS:
             return False
         self._work_out(min(2 * self.reach, _LAST_REACH[self.axes]))
         return True
@@ -78,7 +81,6 @@ class Spectrum:
             self._table[level] = self._coefficients(float(self._levels[level]), reach).ravel()
         self._table[:, self.nothing] = 1.0
         self._modulus = np.abs(self._table)
-        self.envelope = self._modulus.max(axis=0)
 
     def positions(self, orders: OrderArray) -> IndexArray:
         """Flat positions of orders (n, axes) inside the reach."""
@@ -96,30 +98,35 @@ class Spectrum:
         """Their moduli."""
         return np.asarray(self._modulus[self._level_of_row[row]])
 
-    def tail(self, radius: float) -> float:
-        """The largest tail bound over all tones that occur."""
-        if radius not in self._bounds:
-            screened = self._levels[(self._levels > 0) & (self._levels < 1)]
-            self._bounds[radius] = max((self._tail(float(tone), radius) for tone in screened), default=0.0)
-        return self._bounds[radius]
+    def candidates(self, share: FloatArray) -> Candidates:
+        """All orders of some weight: coefficient times `share` (rows,), in the row where that is largest."""
+        of_level = np.zeros(len(self._levels))
+        np.maximum.at(of_level, self._level_of_row, share)
+        weight = (of_level[:, None] * self._modulus).max(axis=0)
+        weight[self.nothing] = 0.0
+        kept = np.flatnonzero(weight > _NOTHING)
+        orders = self.orders[kept]
+        return Candidates(orders, orders @ self.frequencies_per_mm, weight[kept], self._unlisted(of_level))
 
-    def unlisted(self, share: float) -> FloatArray:
-        """Rows (length, weight) that bound all orders beyond the reach, `share` times the tail.
+    def _unlisted(self, share: FloatArray) -> FloatArray:
+        """Rows (length, weight) that bound all orders beyond the reach, `share` (levels,) times the tails.
 
         Beyond the reach some |k| on an axis is at least reach + 1.  A vector as long as
         `longest` * r has an order of at least r.
         """
         first = self.reach + 1.0
-        rows = [(self.shortest_per_mm * first, share * self.tail(first))]
-        for factor in _TAIL_RADII[1:]:
-            length = self.longest_per_mm * first * factor
-            rows.append((length, min(rows[-1][1], share * self.tail(first * factor))))
-        return np.array(rows)
+        lengths = [self.shortest_per_mm * first, *[self.longest_per_mm * first * r for r in _TAIL_RADII[1:]]]
+        weights = [float((share * self._tails(first * r)).max()) for r in _TAIL_RADII]
+        return np.column_stack([lengths, np.minimum.accumulate(weights)])
 
-    def candidates(self, share: float) -> Candidates:
-        """All orders of some weight: `share` times the largest coefficient in any row of tones."""
-        weight = share * self.envelope
-        weight[self.nothing] = 0.0
-        kept = np.flatnonzero(weight > _NOTHING)
-        orders = self.orders[kept]
-        return Candidates(orders, orders @ self.frequencies_per_mm, weight[kept], self.unlisted(share))
+    def _tails(self, radius: float) -> FloatArray:
+        """(levels,) the tail bound at each tone that occurs."""
+        if radius not in self._bounds:
+            screened = (self._levels > 0) & (self._levels < 1)
+            self._bounds[radius] = np.array(
+                [
+                    self._tail(float(t), radius) if inked else 0.0
+                    for t, inked in zip(self._levels, screened, strict=True)
+                ]
+            )
+        return self._bounds[radius]

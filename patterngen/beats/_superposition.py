@@ -9,7 +9,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from patterngen.beats._differences import Strengths, product_bound
+from patterngen.beats._differences import Shares, Strengths
 from patterngen.beats._enumerate import IndexArray, OrderArray
 from patterngen.beats._spectrum import Spectrum
 from patterngen.beats._tiers import octave, window_mm
@@ -23,7 +23,7 @@ from patterngen.model.seeing import InkColours
 
 SetArray = NDArray[np.int64]
 
-_LEAST_Y = 1e-12
+_LEAST = 1e-12
 """A mean below this is taken for it: contrast on perfect black has no meaning."""
 
 
@@ -140,10 +140,11 @@ class Superposition:
         return self.strengths.mean
 
     def shares(self, channels: tuple[int, ...]) -> Shares:
-        """How much of the contrast in these channels of XYZ each participant can bring."""
-        contrasts = self.strengths.contrasts(channels)
-        whole, each = product_bound(contrasts)
-        return Shares(whole, np.array([each[i] if i >= 0 else 1.0 for i in self.screen_of]), contrasts)
+        """How much of the contrast in these channels of XYZ each *spectrum* can bring, row by row."""
+        of_screens = self.strengths.shares(channels)
+        one = np.ones(len(self.rows.plate))
+        each = [of_screens.each[:, i] if i >= 0 else one for i in self.screen_of]
+        return Shares(of_screens.whole, np.stack(each, axis=1) if each else one[:, None][:, :0], of_screens.largest)
 
     def hits(self, orders: OrderArray, frequency_per_mm: FloatArray) -> Hits:
         """Order vectors (h, all axes) as hits; all must lie within the reach of the spectra."""
@@ -167,13 +168,13 @@ class Superposition:
         """(h, slots): which screens and grids have an order that is not zero."""
         return np.stack([orders[:, self.columns[name]].any(axis=1) for name, _ in self.slots], axis=1)
 
-    def contrasts(self, hits: Hits, row: int) -> FloatArray:
-        """Contrast (h,) in one row of tones, before what grids let through."""
+    def contrasts(self, hits: Hits, row: int, *, channels: tuple[int, ...] = (1,)) -> FloatArray:
+        """Contrast (h,) in one row of tones, the largest of the channels of XYZ, before what grids let through."""
         product = np.ones(len(hits))
         for p, spectrum in enumerate(self.spectra):
             product *= spectrum.moduli(row)[hits.positions[:, p]]
-        strength = np.abs(self.strengths.at(row, hits.sets)[:, 1])
-        return np.asarray(2.0 * product * strength / max(float(self.mean[row, 1]), _LEAST_Y))
+        strength = np.abs(self.strengths.at(row, hits.sets)[:, channels])
+        return np.asarray(2.0 * product * (strength / np.maximum(self.mean[row, channels], _LEAST)).max(axis=1))
 
     def amplitudes(self, hits: Hits, row: int) -> ComplexArray:
         """XYZ amplitude (h, 3) in one row of tones, with what grids let through."""
@@ -190,18 +191,6 @@ class Superposition:
         return out
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Shares:
-    """Bounds on contrast: of a set S it is at most `whole` times the product of its members' shares.
-
-    `each` (spectra,); `contrasts` (2^screens,) is the largest true factor of each set of screens.
-    """
-
-    whole: float
-    each: FloatArray
-    contrasts: FloatArray
-
-
 def michelson(amplitude_y: FloatArray, mean_y: FloatArray) -> FloatArray:
     """Contrast 2 |A| / mean."""
-    return np.asarray(2.0 * np.abs(amplitude_y) / np.maximum(mean_y, _LEAST_Y))
+    return np.asarray(2.0 * np.abs(amplitude_y) / np.maximum(mean_y, _LEAST))

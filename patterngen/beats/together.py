@@ -15,7 +15,8 @@ from patterngen.model.screen import Screen
 _SAMPLES_A_SIDE = 320
 _SAMPLES_A_WINDOW = 4
 _ROWS = 200
-_LEVELS = (32, 24, 16, 12, 8, 6, 4)
+_LEVELS = (16, 8, 4)
+_FINE = 64
 
 
 def tones_together(
@@ -25,8 +26,8 @@ def tones_together(
 
     0 where a screen does not print.  Windows lie wholly inside every area that prints there.
     Constant tones over the whole sheet give one row.  Pictures are averaged over the window,
-    sampled, and rounded so that at most about 200 rows remain; the rows in which a screen is
-    at its darkest and lightest are kept beside them.  Inks that never meet are split into
+    sampled, and rounded to 1/16, 1/8 or 1/4 so that at most about 200 rows remain; the rows in
+    which a screen is at its darkest and lightest are kept beside them, to 1/64.  Inks that never meet are split into
     alternatives.  No row means that no two tones hold over such a window (a sheet that is
     smaller than the window counts as one window).
     """
@@ -90,7 +91,7 @@ def _eroded(inside: BoolArray, across: int, down: int) -> BoolArray:
 
 
 def _fewer(tones: FloatArray, exact: Sequence[bool]) -> FloatArray:
-    """Rows rounded (pictures only) until few remain, with every screen's extremes unrounded."""
+    """Rows rounded (pictures only) until few remain, with every screen's extremes rounded less."""
     pictures = np.flatnonzero(~np.asarray(exact))
     if not len(pictures):
         return np.unique(tones, axis=0)
@@ -100,6 +101,10 @@ def _fewer(tones: FloatArray, exact: Sequence[bool]) -> FloatArray:
         if len(printing):
             kept += [printing[np.argmax(tones[printing, i])], printing[np.argmin(tones[printing, i])]]
     extremes = tones[sorted(set(map(int, kept)))]
+    # no tone that prints is rounded away, none that does not reach a solid becomes one
+    fine = np.clip(np.rint(extremes[:, pictures] * _FINE) / _FINE, 1.0 / _FINE, 1.0 - 1.0 / _FINE)
+    whole = (extremes[:, pictures] <= 0.0) | (extremes[:, pictures] >= 1.0)
+    extremes[:, pictures] = np.where(whole, extremes[:, pictures], fine)
     rounded = tones
     for levels in _LEVELS:
         rounded = tones.copy()
