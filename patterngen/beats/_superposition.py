@@ -36,6 +36,11 @@ class ToneRows:
     of_octave: tuple[IndexArray, ...]
 
     @classmethod
+    def blank(cls, screens: int) -> ToneRows:
+        """One row in which nothing prints."""
+        return cls(np.zeros((1, screens)), np.zeros((1, screens)), (np.zeros(1, dtype=np.intp),))
+
+    @classmethod
     def of(cls, screens: Sequence[Screen], overprints: Sequence[Overprint], sheet: SheetSize) -> ToneRows:
         """The rows of all octaves of windows up to the sheet's diagonal."""
         last = int(octave(np.array([sheet.diagonal_mm]))[0])

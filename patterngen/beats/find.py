@@ -36,7 +36,10 @@ def find_beats(
     Sources: Neugebauer 1937 with Demichel's weights; combinations of orders as in Amidror,
     The Theory of the Moire Phenomenon, volume I, chapter 2.
     """
-    over = Superposition(screens, grids, colours, ToneRows.of(screens, overprints, sheet))
+    # of one screen alone, a picture perhaps, it need not be known where its tones hold
+    alone = len(screens) + len(grids) < 2
+    rows = ToneRows.blank(len(screens)) if alone else ToneRows.of(screens, overprints, sheet)
+    over = Superposition(screens, grids, colours, rows)
     near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
     beats = JoinedBeats.none(over)
     found: tuple[Balance, ...] = ()
@@ -46,8 +49,8 @@ def find_beats(
         speed = np.hypot(result.hits.frequency_per_mm[:, 0], result.hits.frequency_per_mm[:, 1])
         slowest = 1.0 / sheet.diagonal_mm
         beats = join(over, result.hits.take(speed >= slowest), viewer, tolerance_per_mm=0.1 * slowest)
-        rows, found = balances(over, result.hits.take(speed < slowest), press, slowest_per_mm=slowest)
-        beats = beats.with_more(rows)
+        slow, found = balances(over, result.hits.take(speed < slowest), press, slowest_per_mm=slowest)
+        beats = beats.with_more(slow)
     return _table(over, beats, viewer, bound_near=near, bound_far=far), found
 
 
