@@ -56,7 +56,7 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     """Derive what was left open, compute every beat, judge."""
     from patterngen.beats.find import find_beats
     from patterngen.beats.own import own_textures
-    from patterngen.beats.together import tones_together
+    from patterngen.beats.together import Together
     from patterngen.colour.inks import InkStack
     from patterngen.job.check import too_much
     from patterngen.rules import _engine, _limits
@@ -72,6 +72,7 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     screens = design.base.screens
     colours = InkStack.of(job)
     viewer = viewer_of(job, colours)
+    limits = {**_limits.limits(job.press.process), **job.press.limits}
     tell("finding beats")
     beats, balance = find_beats(
         screens=screens,
@@ -81,9 +82,11 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         sheet=job.sheet,
         press=job.press,
         overprints=job.overprints,
+        shadow=limits["shadow"].value,
     )
     tell("judging")
-    together = tones_together(screens, job.overprints, job.sheet, window_mm=0.0)
+    places = Together(screens, job.overprints, job.sheet)
+    together = places.rows(window_mm=0.0)
     extremes = {screen.name: tone_extremes(screen) for screen in screens}
     eye = registry.load("patterngen.vision", job.viewing.eye)
     textures = own_textures(screens, together, colours=colours, viewer=viewer)
@@ -92,12 +95,14 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         design=design,
         beats=beats,
         balance=balance,
-        limits={**_limits.limits(job.press.process), **job.press.limits},
+        limits=limits,
         tones_together=together,
         printed_together=printed,
         luminance=colours.luminance(),
         tone_extremes={name: found for name, found in extremes.items() if found},
         shapes_drawn={name: None if found else 0 for name, found in extremes.items()},
+        most_ink=places.most_ink(),
+        paper_y=paper_y(colours),
         eye_valid_cpd=eye.VALID_CPD,
         eye_takes_light=eye.TAKES_LIGHT,
     )
@@ -151,8 +156,12 @@ def viewer_of(job: Job, colours: InkStack) -> Viewer:
     """The job's observer: two distances, two limits, one eye, in the job's light on its paper."""
     from patterngen.vision import viewer
 
-    paper_y = float(colours.primaries(())[1])
-    return viewer(job.viewing, paper_y=paper_y)
+    return viewer(job.viewing, paper_y=paper_y(colours))
+
+
+def paper_y(colours: InkStack) -> float:
+    """Y of the bare paper, the perfect diffuser at 1."""
+    return float(colours.primaries(())[1])
 
 
 def overall(findings: tuple[Finding, ...]) -> Literal["pass", "warn", "fail"]:

@@ -14,9 +14,10 @@ import numpy as np
 
 from patterngen.beats._enumerate import OrderArray
 from patterngen.beats._joined import JoinedBeats
-from patterngen.beats._lattice import IntegerArray, coordinates, integer_basis, modulus_extremes
+from patterngen.beats._lattice import IntegerArray, coordinates, free_phases, modulus_extremes
 from patterngen.beats._superposition import Hits, Superposition, michelson
 from patterngen.beats._swing import PhaseMean, scattered
+from patterngen.beats._tiers import COARSE_PER_MM
 from patterngen.model.area import BoolArray
 from patterngen.model.job import Press
 from patterngen.model.lattice import FloatArray
@@ -27,14 +28,14 @@ from patterngen.model.verdict import Balance
 _WINDOW_MM = 2.0
 """Over so much tones must hold for their mean colour to be seen as one."""
 
-_MULTIPLES = {1: 24, 2: 12, 3: 4}
+_MULTIPLES = {1: 60, 2: 24, 3: 6}
 """By rank: how far along its lattice a balance is followed beyond what the search found."""
 
 _STRONGEST = 300
 """Components of a balance of higher rank that are kept."""
 
 _TONE_ROWS = 4
-"""Rows of tones (those of the largest sum of amplitudes) for which colours are searched."""
+"""Rows of tones (of the largest sum of amplitudes, as they are and as they count) for which colours are searched."""
 
 _REGISTERS = 3000
 _LEAST_SWING = 0.1
@@ -98,15 +99,18 @@ def _weigh(
     grids = any(grid.name in names for grid in over.grids)
     if exact and not grids and len({screen.ink for screen in over.screens if screen.name in names}) < 2:
         return None  # screens of one plate never move against each other
-    basis = _free_phases(hits.orders)
+    basis = free_phases(hits.orders)
     if len(basis) in _MULTIPLES:
-        hits = _followed(over, hits, basis, slowest_per_mm)
+        # harmonics of a slow drift are faster, and move the same colour
+        hits = _followed(over, hits, basis, max(slowest_per_mm, COARSE_PER_MM))
     best = None
+    judged = 0.0
     for amplitude, hits_kept, row in _promising(over, hits, len(basis)):
         turns, _ = coordinates(basis, hits_kept.orders)
-        model = PhaseMean(over.mean[row], amplitude, turns)
+        model = PhaseMean(over.mean[row], amplitude, turns, yule_nielsen=over.colours.yule_nielsen)
         theta, xyz = model.spread()
         dark, light, swing = model.widest_pair(over.colours, theta, xyz, refine=True)
+        judged = max(judged, swing * float(over.weight[row]))
         if best is None or swing > best[0]:
             best = (swing, dark, light, model.luminance_extremes(theta, xyz), model, amplitude, hits_kept, row)
     if best is None or best[0] < _LEAST_SWING:
@@ -127,6 +131,7 @@ def _weigh(
         mean_y=(least_y, float(over.mean[row, 1]), most_y),
         colour_swing=swing,
         colour_swing_register=min(swing, _within_register(model, basis, plates, over.colours)),
+        colour_swing_judged=judged,
         tones={
             screen.name: float(over.rows.plate[row, i]) for i, screen in enumerate(over.screens) if screen.name in names
         },
@@ -145,18 +150,11 @@ def _weigh(
         np.array([len(hits)], dtype=np.int32),
         over.rows.plate[row : row + 1],
         np.array([swing]),
+        michelson(np.sqrt((np.abs(amplitude[:, 1]) ** 2).sum(keepdims=True)), over.mean[row : row + 1, 1])
+        * over.weight[row],
+        np.array([judged]),
     )
     return line, balance
-
-
-def _free_phases(orders: OrderArray) -> IntegerArray:
-    """Rows of which all orders are whole combinations, each with a phase of its own.
-
-    A basis while that is small; of many combinations every axis that takes part stands for itself.
-    """
-    if np.linalg.matrix_rank(orders) <= max(_MULTIPLES):
-        return integer_basis(orders)
-    return np.eye(orders.shape[1], dtype=np.int64)[orders.any(axis=0)]
 
 
 def _three(lab: FloatArray) -> tuple[float, float, float]:
@@ -173,8 +171,10 @@ def _promising(over: Superposition, hits: Hits, rank: int) -> list[tuple[Complex
         relative = np.abs(amplitude).sum(axis=0) / np.maximum(over.mean[row], 1e-12)
         ranked.append((float(relative.max()), int(row), amplitude))
     ranked.sort(key=lambda item: (-item[0], item[1]))
+    counting = sorted(ranked, key=lambda item: (-item[0] * over.weight[item[1]], item[1]))
+    chosen = {row: (strength, row, amplitude) for strength, row, amplitude in ranked[:_TONE_ROWS] + counting[:_TONE_ROWS]}
     out = []
-    for strength, row, amplitude in ranked[:_TONE_ROWS]:
+    for strength, row, amplitude in chosen.values():
         if strength > 0.0:
             kept = np.arange(len(hits))
             if rank not in _MULTIPLES and len(hits) > _STRONGEST:

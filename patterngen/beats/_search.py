@@ -21,17 +21,18 @@ _COLOUR_FLOOR = 2e-3
 _LUMINANCE = (1,)
 _ANY = (0, 1, 2)
 
-_UP = 1e-9
-"""Frequencies (cycles/mm) this near to the axis count as on it when k and -k are told apart."""
-
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Search:
-    """The hits, and the largest visibility (near, far) that anything not listed can have."""
+    """The hits, and the largest visibility that anything not listed can have.
+
+    `bound_far` is for periods up to 1 mm, `bound_far_coarse` for longer ones.
+    """
 
     hits: Hits
     bound_near: float
     bound_far: float
+    bound_far_coarse: float
 
 
 def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search:
@@ -43,7 +44,7 @@ def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search
     seen = over.shares(_LUMINANCE)
     tiers = bands(viewer, start_per_mm=1.0 / diagonal_mm, strongest=_strongest(over, seen))
     _widen(over, seen, tiers)
-    slow = [Tier(-1.0, COARSE_PER_MM, _COLOUR_FLOOR)]
+    slow = [Tier(-1.0, max(COARSE_PER_MM, 1.0 / diagonal_mm), _COLOUR_FLOOR)]
     found: list[Hits] = []
     floors = [tier.floor for tier in tiers]
     for comb in (None, *over.combs):
@@ -51,8 +52,8 @@ def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search
         found.append(hits)
         floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
         found.append(in_tiers(over, _ANY, slow, comb)[0])
-    near, far = _bounds(over, viewer, seen, tiers, floors)
-    return Search(_upright(over, Hits.joined(found)), near, far)
+    near, far, far_coarse = _bounds(over, viewer, seen, tiers, floors)
+    return Search(over.upright(Hits.joined(found)), near, far, far_coarse)
 
 
 def _candidates(over: Superposition, shares: Shares) -> list[Candidates]:
@@ -100,16 +101,17 @@ def _widen(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> None:
 
 def _bounds(
     over: Superposition, viewer: Viewer, shares: Shares, tiers: Sequence[Tier], floors: Sequence[float]
-) -> tuple[float, float]:
-    near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
+) -> tuple[float, float, float]:
+    near, far = LISTED_NEAR, {False: LISTED_FAR * viewer.limit, True: LISTED_FAR * viewer.limit_coarse}
     beyond = _beyond_each(over, shares, tiers).max(axis=1, initial=0.0)
     for tier, floor, left in zip(tiers, floors, beyond.tolist(), strict=True):
         if floor > tier.floor * (1.0 + 1e-9):
             left = max(left, floor)
         inside = np.geomspace(max(tier.low_per_mm, 1e-9), tier.high_per_mm, 24)
         near = max(near, left * float(viewer.sensitivity_near(inside).max()))
-        far = max(far, left * float(viewer.sensitivity_far(inside).max()))
-    return near, far
+        coarse = tier.high_per_mm <= 1.0 + 1e-9
+        far[coarse] = max(far[coarse], left * float(viewer.sensitivity_far(inside).max()))
+    return near, far[False], far[True]
 
 
 def in_tiers(
@@ -156,16 +158,3 @@ def _plane(frequencies_per_mm: FloatArray) -> FloatArray:
         return np.asarray(frequencies_per_mm, dtype=float)
     x, y = frequencies_per_mm[0]
     return np.array([[x, y], [-1e6 * y, 1e6 * x]])
-
-
-def _upright(over: Superposition, hits: Hits) -> Hits:
-    """Each once (k and -k are one), turned so that its frequency points up, or right."""
-    fx, fy = hits.frequency_per_mm[:, 0], hits.frequency_per_mm[:, 1]
-    down = (fy < -_UP) | ((np.abs(fy) <= _UP) & (fx < -_UP))
-    still = np.hypot(fx, fy) <= _UP
-    if len(hits):
-        lead = hits.orders[np.arange(len(hits)), np.argmax(hits.orders != 0, axis=1)]
-        down = np.where(still, lead < 0, down)
-    sign = np.where(down, -1, 1).astype(np.int32)
-    orders, rows = np.unique(hits.orders * sign[:, None], axis=0, return_index=True)
-    return over.hits(orders, hits.frequency_per_mm[rows] * sign[rows, None])

@@ -98,6 +98,11 @@ class Spectrum:
         """Their moduli."""
         return np.asarray(self._modulus[self._level_of_row[row]])
 
+    @property
+    def envelope(self) -> FloatArray:
+        """By flat position the largest modulus at any tone that occurs."""
+        return np.asarray(self._modulus.max(axis=0))
+
     def candidates(self, share: FloatArray) -> Candidates:
         """All orders of some weight: coefficient times `share` (rows,), in the row where that is largest."""
         of_level = np.zeros(len(self._levels))

@@ -11,9 +11,10 @@ from numpy.typing import NDArray
 
 from patterngen.beats._differences import Shares, Strengths
 from patterngen.beats._enumerate import IndexArray, OrderArray
+from patterngen.beats._lattice import distinct_rows
 from patterngen.beats._spectrum import Spectrum
 from patterngen.beats._tiers import octave, window_mm
-from patterngen.beats.together import tones_together
+from patterngen.beats.together import Together
 from patterngen.errors import Fault, InputError
 from patterngen.model.area import BoolArray
 from patterngen.model.job import Overprint, SheetSize
@@ -22,6 +23,9 @@ from patterngen.model.screen import ComplexArray, Grid, Screen
 from patterngen.model.seeing import InkColours
 
 SetArray = NDArray[np.int64]
+
+_UP = 1e-9
+"""Frequencies (cycles/mm) this near to the axis count as on it when k and -k are told apart."""
 
 _LEAST = 1e-12
 """A mean below this is taken for it: contrast on perfect black has no meaning."""
@@ -44,7 +48,8 @@ class ToneRows:
     def of(cls, screens: Sequence[Screen], overprints: Sequence[Overprint], sheet: SheetSize) -> ToneRows:
         """The rows of all octaves of windows up to the sheet's diagonal."""
         last = int(octave(np.array([sheet.diagonal_mm]))[0])
-        found = [tones_together(screens, overprints, sheet, window_mm=window_mm(number)) for number in range(last + 1)]
+        together = Together(screens, overprints, sheet)
+        found = [together.rows(window_mm=window_mm(number)) for number in range(last + 1)]
         plate, place = np.unique(np.concatenate(found), axis=0, return_inverse=True)
         place = place.ravel()
         ends = np.cumsum([len(rows) for rows in found])
@@ -96,8 +101,11 @@ class Superposition:
     grids that sample.
     """
 
-    def __init__(self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows) -> None:
+    def __init__(
+        self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows, *, shadow: float = 0.0
+    ) -> None:
         self.screens, self.grids, self.colours, self.rows = tuple(screens), tuple(grids), colours, rows
+        self._shadow = shadow
         self.combs = tuple(grid for grid in grids if grid.samples)
         if len(self.combs) > 1:
             names = ", ".join(grid.name for grid in self.combs)
@@ -144,6 +152,14 @@ class Superposition:
         """(rows, 3) mean XYZ."""
         return self.strengths.mean
 
+    @cached_property
+    def weight(self) -> FloatArray:
+        """(rows,) how much a pattern counts when it is judged: less in proportion where the mean is a shadow."""
+        if self._shadow <= 0.0:
+            return np.ones(len(self.mean))
+        paper_y = float(np.ravel(self.colours.primaries(()))[1])
+        return np.minimum(1.0, self.mean[:, 1] / (self._shadow * paper_y))
+
     def shares(self, channels: tuple[int, ...]) -> Shares:
         """How much of the contrast in these channels of XYZ each *spectrum* can bring, row by row."""
         of_screens = self.strengths.shares(channels)
@@ -161,6 +177,19 @@ class Superposition:
             if self.screen_of[p] >= 0:
                 sets |= np.where(part.any(axis=1), 1 << self.screen_of[p], 0)
         return Hits(orders, positions, sets, frequency_per_mm)
+
+    def upright(self, hits: Hits) -> Hits:
+        """Each once (k and -k are one), turned so that its frequency points up, or right."""
+        fx, fy = hits.frequency_per_mm[:, 0], hits.frequency_per_mm[:, 1]
+        down = (fy < -_UP) | ((np.abs(fy) <= _UP) & (fx < -_UP))
+        still = np.hypot(fx, fy) <= _UP
+        if len(hits):
+            lead = hits.orders[np.arange(len(hits)), np.argmax(hits.orders != 0, axis=1)]
+            down = np.where(still, lead < 0, down)
+        sign = np.where(down, -1, 1).astype(np.int32)
+        orders = hits.orders * sign[:, None]
+        rows = distinct_rows(orders)
+        return self.hits(orders[rows], hits.frequency_per_mm[rows] * sign[rows, None])
 
     def within_reach(self, orders: OrderArray) -> BoolArray:
         """Which order vectors (h, all axes) the spectra reach."""

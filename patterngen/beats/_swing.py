@@ -25,14 +25,24 @@ _DIRECTIONS = _directions()
 
 
 class PhaseMean:
-    """Mean XYZ as a function of free phases: mean + sum 2 Re(A_j exp(2 pi i n_j . theta)).
+    """Mean XYZ as a function of free phases, from the mean and amplitudes of Yule-Nielsen's root.
 
-    `turns` (j, r) integers, `amplitude` (j, 3).
+    XYZ = (N + sum 2 Re(A_j exp(2 pi i n_j . theta)))^n, where N^n is the mean (3,) and n N^(n-1) A_j
+    the `amplitude` (j, 3) of component j; `turns` (j, r) are the integers n_j.  With n = 1 this is
+    the plain sum.
     """
 
-    def __init__(self, mean: FloatArray, amplitude: ComplexArray, turns: IntegerArray) -> None:
-        self.mean, self.amplitude, self.turns = mean, amplitude, turns
+    def __init__(
+        self, mean: FloatArray, amplitude: ComplexArray, turns: IntegerArray, *, yule_nielsen: float = 1.0
+    ) -> None:
+        self._power = yule_nielsen
+        self.mean = np.maximum(mean, 0.0) ** (1.0 / yule_nielsen)
+        slope = yule_nielsen * np.maximum(self.mean, 1e-9) ** (yule_nielsen - 1.0)
+        self.amplitude, self.turns = amplitude / slope, turns
         self.rank = turns.shape[1]
+
+    def _xyz(self, root: FloatArray) -> FloatArray:
+        return np.asarray(np.maximum(root, 0.0) ** self._power)
 
     def at(self, theta: FloatArray) -> FloatArray:
         """XYZ (n, 3), never negative, at phases (n, r) in cycles."""
@@ -40,7 +50,7 @@ class PhaseMean:
         for start in range(0, len(theta), 4096):
             phase = np.exp(2j * np.pi * (theta[start : start + 4096] @ self.turns.T))
             out[start : start + 4096] = self.mean + 2.0 * (phase @ self.amplitude).real
-        return np.maximum(out, 0.0)
+        return self._xyz(out)
 
     def spread(self) -> tuple[FloatArray, FloatArray]:
         """Phases that cover the torus (n, r), and XYZ there."""
@@ -55,7 +65,7 @@ class PhaseMean:
             grid = np.zeros((size,) * self.rank, dtype=complex)
             np.add.at(grid, tuple((self.turns % size).T), self.amplitude[:, channel])
             xyz[:, channel] = self.mean[channel] + 2.0 * np.fft.ifftn(grid, norm="forward").real.ravel()
-        return theta, np.maximum(xyz, 0.0)
+        return theta, self._xyz(xyz)
 
     def luminance_extremes(self, theta: FloatArray, xyz: FloatArray) -> tuple[float, float]:
         """(least, largest) Y over all phases, from a covering, refined."""

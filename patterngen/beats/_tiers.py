@@ -14,7 +14,7 @@ LISTED_NEAR = 0.5
 LISTED_FAR = 0.1
 """A combination is listed from this visibility, or from this part of the far limit."""
 
-JOINING = 0.6
+JOINING = 0.4
 """Combinations are looked for down to this part of the least contrast: several may fall on one frequency."""
 
 COARSE_PER_MM = 0.5

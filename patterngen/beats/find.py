@@ -7,6 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from patterngen.beats._balance import balances
+from patterngen.beats._families import with_families
 from patterngen.beats._joined import JoinedBeats, join
 from patterngen.beats._search import search
 from patterngen.beats._superposition import Superposition, ToneRows, michelson
@@ -16,10 +17,13 @@ from patterngen.model.screen import Grid, Screen
 from patterngen.model.seeing import InkColours, Viewer
 from patterngen.model.verdict import Balance, BeatTable, Grade
 
+_STILL_PER_MM = 1e-9
+"""Frequencies below this are zero."""
+
 
 def find_beats(
     *, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, viewer: Viewer,
-    sheet: SheetSize, press: Press, overprints: Sequence[Overprint],
+    sheet: SheetSize, press: Press, overprints: Sequence[Overprint], shadow: float = 0.0,
 ) -> tuple[BeatTable, tuple[Balance, ...]]:  # fmt: skip
     """Every listed beat of two or more screens or grids, of any order, and every balance.
 
@@ -30,7 +34,8 @@ def find_beats(
     by the decay of the coefficients (to cancel they need partners of like length), and the
     bounds stand in the table.  A sampling grid cancels any length, so with one the bound is
     weaker.  A period longer than the sheet's diagonal is balance: a `Balance`, and one row of
-    the table whose contrast is that of the mean.  Raises `InputError` when more than one grid
+    the table whose contrast is that of the mean.  Tones whose mean luminance is below `shadow`
+    (share of the paper's) count less in proportion in the `judged` columns.  Raises `InputError` when more than one grid
     samples.
 
     Sources: Neugebauer 1937 with Demichel's weights; combinations of orders as in Amidror,
@@ -39,28 +44,32 @@ def find_beats(
     # of one screen alone, a picture perhaps, it need not be known where its tones hold
     alone = len(screens) + len(grids) < 2
     rows = ToneRows.blank(len(screens)) if alone else ToneRows.of(screens, overprints, sheet)
-    over = Superposition(screens, grids, colours, rows)
-    near, far = LISTED_NEAR, LISTED_FAR * max(viewer.limit, viewer.limit_coarse)
+    over = Superposition(screens, grids, colours, rows, shadow=shadow)
+    bounds = (LISTED_NEAR, LISTED_FAR * viewer.limit, LISTED_FAR * viewer.limit_coarse)
     beats = JoinedBeats.none(over)
     found: tuple[Balance, ...] = ()
     if over.participants >= 2 and len(over.rows.plate):
         result = search(over, viewer, diagonal_mm=sheet.diagonal_mm)
-        near, far = result.bound_near, result.bound_far
-        speed = np.hypot(result.hits.frequency_per_mm[:, 0], result.hits.frequency_per_mm[:, 1])
+        bounds = (result.bound_near, result.bound_far, result.bound_far_coarse)
+        hits = with_families(over, result.hits, viewer)
+        speed = np.hypot(hits.frequency_per_mm[:, 0], hits.frequency_per_mm[:, 1])
         slowest = 1.0 / sheet.diagonal_mm
-        beats = join(over, result.hits.take(speed >= slowest), viewer, tolerance_per_mm=0.1 * slowest)
-        slow, found = balances(over, result.hits.take(speed < slowest), press, slowest_per_mm=slowest)
+        beats = join(over, hits.take(speed >= slowest), viewer, tolerance_per_mm=0.1 * slowest)
+        slow, found = balances(over, hits.take(speed < slowest), press, slowest_per_mm=slowest)
         beats = beats.with_more(slow)
-    return _table(over, beats, viewer, bound_near=near, bound_far=far), found
+    return _table(over, beats, viewer, bounds), found
 
 
 def _table(
-    over: Superposition, beats: JoinedBeats, viewer: Viewer, *, bound_near: float, bound_far: float
+    over: Superposition, beats: JoinedBeats, viewer: Viewer, bounds: tuple[float, float, float]
 ) -> BeatTable:
     """The beats as the eye has them, most visible from far first."""
     speed = np.hypot(beats.frequency_per_mm[:, 0], beats.frequency_per_mm[:, 1])
     contrast = michelson(beats.power[:, 1], beats.mean[:, 1])
-    near, far = viewer.sensitivity_near(speed), viewer.sensitivity_far(speed)
+    # what does not vary over the sheet is no pattern: models that do not fall to 0 there are not asked
+    varies = speed > _STILL_PER_MM
+    near = np.where(varies, viewer.sensitivity_near(speed), 0.0)
+    far = np.where(varies, viewer.sensitivity_far(speed), 0.0)
     with np.errstate(divide="ignore", over="ignore"):
         threshold = 1.0 / near
     visibility, visibility_far = contrast * near, contrast * far
@@ -83,9 +92,12 @@ def _table(
         components=beats.components[order],
         tones=beats.tones[order],
         colour_swing=beats.colour_swing[order],
+        visibility_far_judged=(beats.contrast_judged * far)[order],
+        colour_swing_judged=beats.colour_swing_judged[order],
         grade=tuple(_grade(float(visibility[i]), float(visibility_far[i]), float(limits[i])) for i in order),
-        bound_visibility=bound_near,
-        bound_visibility_far=bound_far,
+        bound_visibility=bounds[0],
+        bound_visibility_far=bounds[1],
+        bound_visibility_far_coarse=bounds[2],
     )
 
 

@@ -30,6 +30,10 @@ class Evidence:
     """Per screen: (smallest non-zero, largest) plate tone that occurs."""
     shapes_drawn: Mapping[str, int | None]
     """Per screen: how many shapes it draws, None where that was not counted."""
+    most_ink: float
+    """The largest sum of printed tones in one place (1 = 100 %); screens of one ink do not add up."""
+    paper_y: float
+    """Y of the paper (perfect diffuser = 1)."""
     eye_valid_cpd: tuple[float, float] | None = None
     """Cycles per degree between which the eye model is published, None where that is not known."""
     eye_takes_light: bool = True

@@ -85,7 +85,8 @@ class BeatTable:
     component in XYZ (Y of the perfect diffuser = 1); `power` (n, 3) is the root of the
     sum of squares over joined components.  Contrasts are Michelson in Y.
     `tones` (n, screens) are the plate tones at which the row was found.
-    `bound_*` say how strong any beat that is not listed can be at the most.
+    `bound_*` say how strong any combination that is not listed can be at the most: at the reading
+    distance, from far for periods up to 1 mm, from far for longer ones.
     """
 
     slots: tuple[tuple[str, int], ...]
@@ -104,9 +105,14 @@ class BeatTable:
     tones: FloatArray
     colour_swing: FloatArray
     """CIEDE2000 between the extremes over register, NaN where it was not worked out (periods up to 2 mm)."""
+    visibility_far_judged: FloatArray
+    """`visibility_far` where it counts most: shadows (see the limit of that name) count less in proportion."""
+    colour_swing_judged: FloatArray
+    """`colour_swing` in the same way."""
     grade: tuple[Grade, ...]
     bound_visibility: float
     bound_visibility_far: float
+    bound_visibility_far_coarse: float
 
     def __len__(self) -> int:
         return len(self.contrast)
@@ -159,6 +165,8 @@ class Balance:
     """Y (0 to 1) at the darkest register, on average, and at the lightest."""
     colour_swing: float
     colour_swing_register: float
+    colour_swing_judged: float
+    """The swing where it counts most: shadows count less in proportion."""
     tones: Mapping[str, float]
 
 

@@ -54,6 +54,7 @@ KINDS: Mapping[str, LimitKind] = {
     "ruling_highest": LimitKind(RULING, "finest ruling in use"),
     "ruling_usual": LimitKind(RULING, "ruling taken where the preset leaves it open"),
     "register_usual": LimitKind(LENGTH, "best register the process is trusted to hold"),
+    "shadow": LimitKind(SHARE, "share of the paper's luminance below which a pattern counts less in proportion"),
     "drift_warn": LimitKind(COLOUR_DIFFERENCE, "colour that moves with register: worth a warning"),
     "drift_fail": LimitKind(COLOUR_DIFFERENCE, "colour that moves with register: too much"),
 }

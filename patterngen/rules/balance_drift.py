@@ -28,8 +28,9 @@ SOURCES = (
     "trade-same-angle",
     "trade-rosette-centres",
     "amidror-stability",
+    "shadow-calibration",
 )
-LIMITS = ("drift_warn", "drift_fail")
+LIMITS = ("drift_warn", "drift_fail", "shadow")
 IDLE = "Fewer than two screens: nothing can move against anything."
 
 EXAMPLE_PASS = preset(
@@ -42,20 +43,20 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Colour swing of every balance and of every slow beat."""
     for balance in evidence.balance:
         sentence = _balance_sentence(evidence, balance)
-        yield _against_both(evidence, balance.colour_swing, listed(balance.names), sentence)
+        yield _against_both(evidence, balance.colour_swing_judged, listed(balance.names), sentence)
     table = evidence.beats
     slow = [
         int(row) for row in np.flatnonzero(np.isfinite(table.colour_swing) & ~slower_than_sheet(evidence))
     ]
-    for rows in patterns(table, slow, table.colour_swing):
+    for rows in patterns(table, slow, table.colour_swing_judged):
         who = listed(list(table.participants(rows[0])))
-        swing = float(table.colour_swing[rows[0]])
+        swing, judged = float(table.colour_swing[rows[0]]), float(table.colour_swing_judged[rows[0]])
         yield _against_both(
             evidence,
-            swing,
+            judged,
             who,
             f"{who} shade the print in waves {width(float(table.period_mm[rows[0]]))} long; "
-            f"from crest to trough the colour moves by {rounded(swing)} CIEDE2000.",
+            f"from crest to trough the colour moves by {rounded(swing)} CIEDE2000{_counted(swing, judged)}.",
         )
     if len(table.slots) > 1 and not evidence.balance and not slow:
         text = (
@@ -90,7 +91,7 @@ def _balance_sentence(evidence: Evidence, balance: Balance) -> str:
     )
     parts = [
         f"{who} {state}: as register moves ({such}), the colour moves by {rounded(balance.colour_swing)} "
-        "CIEDE2000; "
+        f"CIEDE2000{_counted(balance.colour_swing, balance.colour_swing_judged)}; "
         f"Y is {rounded(dark, digits=3)} at the darkest register and {rounded(light, digits=3)} at the "
         "lightest."
     ]
@@ -107,6 +108,11 @@ def _balance_sentence(evidence: Evidence, balance: Balance) -> str:
     else:
         parts.append("State angle_error and size_error in [press] to learn how it drifts across a sheet.")
     return " ".join(parts)
+
+
+def _counted(swing: float, judged: float) -> str:
+    """What is said where the tones that move most are shadows."""
+    return f" in the shadows, which count less in proportion (as {rounded(judged)})" if judged < 0.98 * swing else ""
 
 
 def _state(balance: Balance) -> str:

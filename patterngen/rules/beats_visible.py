@@ -24,8 +24,14 @@ reach four times the threshold of the eye model, longer ones may only reach the 
 MEASURES = """Contrast of each beat over the threshold contrast of the eye model, at the far distance of
 [viewing]; limit and limit_coarse stand there too. Combinations that are not listed are bounded, and the
 bound is judged as well. Contrast is that of infinite extent, with the screens exactly as designed."""
-SOURCES = ("calibration-on-practice", "barten-1999", "beat-period-formula")
-LIMITS: tuple[str, ...] = ()
+SOURCES = (
+    "calibration-on-practice",
+    "barten-1999",
+    "beat-period-formula",
+    "shadow-calibration",
+    "trade-textbook-midtones",
+)
+LIMITS = ("shadow",)
 _SAME_RULING, _LARGEST_TURN_DEG = 1e-3, 8.0
 """A cure keeps the ruling, and turns a screen by so much at the most."""
 IDLE = "Fewer than two screens or grids: nothing can beat."
@@ -45,13 +51,18 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         return
     for rows in patterns(table, seen, table.visibility_far / limits):
         row = rows[0]
+        limit, judged = float(limits[row]), float(table.visibility_far_judged[row])
+        spared = judged < limit
+        measured = float(table.visibility_far[row]) if spared else judged
+        remark = _in_shadow(evidence, row) if measured < 0.98 * table.visibility_far[row] or spared else ""
         yield Measurement(
-            float(table.visibility_far[row]),
-            float(limits[row]),
+            measured,
+            limit,
             "times threshold",
             listed(list(table.participants(row))),
-            f"{_sentence(table, rows, float(limits[row]))} {_advice(evidence, row)}",
-            said,
+            " ".join(filter(None, (_sentence(table, rows, measured / limit), remark, _advice(evidence, row)))),
+            source("shadow-calibration") if spared else said,
+            worst="warn" if spared else "fail",
         )
     if seen:
         return
@@ -70,24 +81,36 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
             f"{rounded(float(table.visibility_far[row] / limits[row]))} of the limit.",
             said,
         )
-    yield Measurement(
-        table.bound_visibility_far,
-        min(viewing.limit, viewing.limit_coarse),
-        "times threshold",
-        "beats that are not listed",
-        f"No combination that is not listed can exceed {rounded(table.bound_visibility_far)} times the "
-        "threshold "
-        f"at {rounded(viewing.far_mm, digits=3)} mm.",
-        said,
-        worst="warn",
+    for bound, limit, which in (
+        (table.bound_visibility_far, viewing.limit, "up to 1 mm"),
+        (table.bound_visibility_far_coarse, viewing.limit_coarse, "over 1 mm"),
+    ):
+        yield Measurement(
+            bound,
+            limit,
+            "times threshold",
+            f"beats {which} that are not listed",
+            f"No combination with a period {which} that is not listed can exceed {rounded(bound)} times the "
+            f"threshold at {rounded(viewing.far_mm, digits=3)} mm.",
+            said,
+            worst="warn",
+        )
+
+
+def _in_shadow(evidence: Evidence, row: int) -> str:
+    """Why a beat counts less than it is strong."""
+    table = evidence.beats
+    share = float(table.mean[row, 1]) / evidence.paper_y
+    return (
+        f"That is at its strongest, in tones of {rounded(100 * share)} % of the paper's luminance; shadows below "
+        f"{rounded(100 * evidence.limits['shadow'].value)} % count less in proportion."
     )
 
 
-def _sentence(table: BeatTable, rows: list[int], limit: float) -> str:
+def _sentence(table: BeatTable, rows: list[int], over: float) -> str:
     row = rows[0]
     who = listed(list(table.participants(row)))
     where = listed([degrees(_band_deg(table, r)) for r in sorted(rows, key=lambda r: _band_deg(table, r))])
-    over = float(table.visibility_far[row]) / limit
     much = f"{rounded(over)} times over the limit" if over >= 1.05 else "just over the limit"
     return f"{who} make bands {width(float(table.period_mm[row]))} wide, running at {where}, {much}."
 

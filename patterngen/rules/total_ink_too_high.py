@@ -33,22 +33,22 @@ EXAMPLE_FAIL = preset(
 
 def measure(evidence: Evidence) -> Iterator[Measurement]:
     """The worst place."""
-    sums = evidence.printed_together.sum(axis=1)
-    if not sums.size or float(sums.max()) <= 0:
+    if evidence.most_ink <= 0:
         yield idle(IDLE)
         return
     limit = evidence.limits.get("total_ink")
     if limit is None:
         yield no_limit(evidence, "total_ink")
         return
+    sums = evidence.printed_together.sum(axis=1)
     worst = int(np.argmax(sums))
     names = [screen.name for screen in evidence.design.base.screens]
     parts = [
-        f"{name} {percent(float(tone))}"
+        f"{name} about {percent(float(tone))}"
         for name, tone in zip(names, evidence.printed_together[worst], strict=True)
         if tone > 0
     ]
-    total = float(sums[worst])
+    total = evidence.most_ink
     sum_of = f"{listed(parts)} make {percent(total)} in print" if len(parts) > 1 else f"{parts[0]} in print"
     yield against(
         limit,

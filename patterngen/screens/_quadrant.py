@@ -539,10 +539,23 @@ def series(shape: Shape, tone: float, *, reach: int) -> FloatArray:
 
 def edge_lengths(shape: Shape, tones: FloatArray, *, sides: tuple[float, float]) -> FloatArray:
     """Length (n,) of inked edge in one cell of the given sides, at each tone (n,) between 0 and 1."""
-    walk = _walk(shape, levels_of(shape, tones))
+    if len(tones) == 1:
+        return np.array([_edge_length(shape.name, float(tones[0]), sides)])
+    return _edges_at(shape, levels_of(shape, tones), sides)
+
+
+@lru_cache(maxsize=4096)
+def _edge_length(name: str, tone: float, sides: tuple[float, float]) -> float:
+    """One tone, kept: the screens of a job share their tones and often their ruling."""
+    return float(_edges_at(SHAPES[name], np.array([level_of(name, tone)]), sides)[0])
+
+
+def _edges_at(shape: Shape, levels: FloatArray, sides: tuple[float, float]) -> FloatArray:
+    walk = _walk(shape, levels)
     steps = np.hypot(walk.da * sides[0], walk.db * sides[1]).sum(axis=1)
     # a quadrant's half cells are sides / 2, and there are four quadrants
-    return 2.0 * np.bincount(walk.of[~walk.edge], steps[~walk.edge], minlength=len(tones)).astype(float)
+    lengths: FloatArray = 2.0 * np.bincount(walk.of[~walk.edge], steps[~walk.edge], minlength=len(levels))
+    return lengths
 
 
 @dataclass(frozen=True)
@@ -561,7 +574,7 @@ class Extent:
     edge: FloatArray
 
 
-@lru_cache(maxsize=512)
+@lru_cache(maxsize=4096)
 def extent(name: str, tone: float) -> Extent:
     """The extent of a shape at a tone between 0 and 1."""
     shape = SHAPES[name]

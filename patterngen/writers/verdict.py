@@ -30,6 +30,7 @@ def document(verdict: Verdict) -> dict[str, Any]:
             "beats_bound": {
                 "visibility": verdict.beats.bound_visibility,
                 "visibility_far": verdict.beats.bound_visibility_far,
+                "visibility_far_over_1_mm": verdict.beats.bound_visibility_far_coarse,
             },
             "balance": [_balance(row) for row in verdict.balance],
             "keys": [],
@@ -91,6 +92,10 @@ def _beats(beats: BeatTable, screens: list[str]) -> list[dict[str, Any]]:
             "tones": dict(zip(screens, beats.tones[row], strict=True)),
             "components": beats.components[row],
             "colour_difference": beats.colour_swing[row],
+            "judged": {
+                "visibility_far": beats.visibility_far_judged[row],
+                "colour_difference": beats.colour_swing_judged[row],
+            },
         }
         for row in range(len(beats))
     ]
@@ -108,6 +113,7 @@ def _balance(row: Balance) -> dict[str, Any]:
         "mean_y": dict(zip(("darkest", "average", "lightest"), row.mean_y, strict=True)),
         "colour_difference": row.colour_swing,
         "colour_difference_in_register": row.colour_swing_register,
+        "judged": {"colour_difference": row.colour_swing_judged},
         "tones": row.tones,
     }
 

@@ -245,7 +245,7 @@ def test_pictures_keep_their_extremes() -> None:
         for name, a, f in zip("CMK", (15, 75, 45), fields, strict=True)
     ]
     rows = tones_together(screens, (), SHEET, window_mm=0.25)
-    assert 20 < len(rows) <= 206
+    assert 20 < len(rows) <= 408
     for i, field in enumerate(fields):
         assert field.values is not None
         assert rows[:, i].max() == pytest.approx(float(field.values.max()), abs=0.02)

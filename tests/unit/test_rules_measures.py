@@ -100,9 +100,12 @@ def beats(slots: tuple[tuple[str, int], ...], rows: list[Mapping[str, Any]]) -> 
         components=np.ones(n, dtype=np.int32),
         tones=np.zeros((n, len(slots))),
         colour_swing=column("swing", math.nan),
+        visibility_far_judged=np.array([row.get("judged", row.get("far", 0.0)) for row in rows], dtype=float),
+        colour_swing_judged=column("swing", math.nan),
         grade=tuple(row.get("grade", "texture") for row in rows),
         bound_visibility=0.1,
         bound_visibility_far=0.05,
+        bound_visibility_far_coarse=0.05,
     )
 
 
@@ -140,6 +143,8 @@ def evidence(*screens: MadeScreen, press: Press | None = None, **changes: Any) -
         "tones_together": tones,
         "printed_together": tones,
         "luminance": {},
+        "paper_y": 0.876,
+        "most_ink": float(tones.sum()),
         "tone_extremes": {
             s.name: (s.tone.constant, s.tone.constant) if s.tone.constant is not None else (0.002, 0.998)
             for s in screens
@@ -207,7 +212,7 @@ def test_bands_along_the_edge_run_at_zero_and_never_at_180() -> None:
 
 def test_calm_beats_pass_with_the_strongest_named_and_the_rest_bounded() -> None:
     calm = [band(38.0, 0.5, far=2.0, grade="texture"), band(10.0, 3.0, far=0.2, grade="texture")]
-    strongest, bound = found("beats-visible", pair(*calm))
+    strongest, bound, coarse_bound = found("beats-visible", pair(*calm))
     assert (strongest.status, strongest.measured, strongest.margin) == ("pass", 2.0, 2.0)
     assert (bound.status, bound.measured, bound.limit) == ("pass", 0.05, 1.0)
 
@@ -245,6 +250,7 @@ def balance(swing: float, **more: Any) -> Balance:
         "mean_y": (0.21, 0.22, 0.24),
         "colour_swing": swing,
         "colour_swing_register": 0.8 * swing,
+        "colour_swing_judged": swing,
         "tones": {},
         **more,
     }

@@ -24,12 +24,14 @@ def verdict(**changes: Any) -> Verdict:
         contrast=two([0.12345678901234567, 0.01]), contrast_min=two([0.0, -0.0]), contrast_max=two([0.2, 0.02]),
         threshold=two([np.inf, 0.002]), visibility=two([0.0, 5.0]), visibility_far=two([0.0, 3.0]),
         components=two([2, 1], dtype=np.int32), tones=two([[0.4, 0.4], [0.4, 0.7]]),
-        colour_swing=two([6.5, np.nan]), grade=("unseen", "texture"), bound_visibility=0.4, bound_visibility_far=0.3,
+        colour_swing=two([6.5, np.nan]),
+        visibility_far_judged=two([0.0, 3.0]), colour_swing_judged=two([6.5, np.nan]), grade=("unseen", "texture"), bound_visibility=0.4, bound_visibility_far=0.3,
+        bound_visibility_far_coarse=0.1,
     )  # fmt: skip
     balance = Balance(
         names=("cyan", "black"), orders={"cyan": [1, 0], "black": [-1, 0]}, frequency_per_mm=(0.0, 0.0), exact=True,
         drift_period_mm=float("inf"), lab_low=(50, 0, 0), lab_high=(56, 0, 0), mean_y=(0.2, 0.25, 0.3),
-        colour_swing=6.5, colour_swing_register=1.0, tones={"cyan": 0.4, "black": 0.4},
+        colour_swing=6.5, colour_swing_register=1.0, colour_swing_judged=6.5, tones={"cyan": 0.4, "black": 0.4},
     )  # fmt: skip
     given: dict[str, Any] = {
         "job": "carton", "title": "Carton", "status": "warn",
