@@ -6,13 +6,14 @@ import contextlib
 import os
 import signal
 import sys
+from dataclasses import asdict
 from types import FrameType
 from typing import Any, NoReturn
 
 import click
 
 from patterngen import __version__
-from patterngen.errors import MachineError, PatterngenError
+from patterngen.errors import InputError, MachineError, PatterngenError
 from patterngen.registry import load, names
 
 
@@ -60,7 +61,8 @@ def run() -> NoReturn:
     signal.signal(signal.SIGTERM, _leave)
     try:
         code = commands.main(prog_name="patterngen", standalone_mode=False)
-        sys.stdout.flush()
+        if sys.stdout is not None:
+            sys.stdout.flush()
     except click.ClickException as error:
         _say(f"patterngen: {error.format_message()}")
         code = 2
@@ -72,6 +74,10 @@ def run() -> NoReturn:
     except PatterngenError as error:
         for line in str(error).splitlines():
             _say(line)
+        if isinstance(error, InputError) and "--json" in sys.argv:
+            from patterngen.cli._options import print_json
+
+            print_json({"faults": [asdict(fault) for fault in error.faults]})
         code = error.exit_code
     except BrokenPipeError:
         # The reader of our output has gone; what is left to print has no address.
@@ -98,11 +104,13 @@ def run() -> NoReturn:
 def _say(line: str) -> None:
     # where standard error itself is closed, the exit code is all that can still be told
     with contextlib.suppress(OSError, ValueError):
-        print(line, file=sys.stderr)
+        if sys.stderr is not None:
+            encoding = sys.stderr.encoding or "ascii"
+            print(line.encode(encoding, "backslashreplace").decode(encoding), file=sys.stderr)
 
 
 def _mute_standard_output() -> None:
-    with contextlib.suppress(OSError, ValueError):
+    with contextlib.suppress(OSError, ValueError, AttributeError):
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 

@@ -1,10 +1,11 @@
-"""Options that several commands share, and the one way of telling progress."""
+"""Options that several commands share, and the ways of telling: JSON, words, progress."""
 
 from __future__ import annotations
 
 import json
 import os
 import sys
+import threading
 import time
 from collections.abc import Callable
 from typing import Any, TypeVar
@@ -28,16 +29,24 @@ set_option = click.option(
 )
 
 
+def telling_options(function: Function) -> Function:
+    """`--json` and `--quiet`, which every command has."""
+    return quiet_option(json_option(function))
+
+
 def job_options(function: Function) -> Function:
     """The preset and the options of every command that takes one."""
-    for decorate in (quiet_option, json_option, set_option, preset_argument):
-        function = decorate(function)
-    return function
+    return preset_argument(set_option(telling_options(function)))
 
 
 def coloured() -> bool:
     """Whether standard output wants colour (NO_COLOR and dumb terminals are honoured)."""
-    return sys.stdout.isatty() and not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
+    return (
+        sys.stdout is not None
+        and sys.stdout.isatty()
+        and not os.environ.get("NO_COLOR")
+        and os.environ.get("TERM") != "dumb"
+    )
 
 
 def strong(text: str, colour: str) -> str:
@@ -46,33 +55,69 @@ def strong(text: str, colour: str) -> str:
 
 
 def print_json(data: object) -> None:
-    """One JSON document on standard output."""
-    sys.stdout.write(json.dumps(data, allow_nan=False, ensure_ascii=False, indent=2) + "\n")
+    """One JSON document on standard output, UTF-8 whatever the locale."""
+    if sys.stdout is None:
+        return
+    text = json.dumps(data, allow_nan=False, ensure_ascii=False, indent=2) + "\n"
+    sys.stdout.flush()
+    sys.stdout.buffer.write(text.encode("utf-8"))
+    sys.stdout.buffer.flush()
+
+
+def print_words(text: str) -> None:
+    """Words on standard output; what the locale cannot write is spelled out."""
+    if sys.stdout is None:
+        return
+    encoding = sys.stdout.encoding or "ascii"
+    sys.stdout.write(text.encode(encoding, "backslashreplace").decode(encoding) + "\n")
 
 
 class Progress:
-    """Says on standard error what is being done, once the work has taken longer than a second."""
+    """Says on standard error what is being done and for how long, once the work has taken longer than a second.
+
+    On a terminal one line is kept up to date; elsewhere a plain line is written when the stage
+    changes, and every ten seconds.
+    """
 
     def __init__(self, *, quiet: bool) -> None:
-        self._quiet = quiet
         self._started = time.monotonic()
-        self._live = sys.stderr.isatty() and not quiet
-        self._shown = False
+        self._live = sys.stderr is not None and sys.stderr.isatty() and not quiet
+        self._stage = ""
+        self._told = ("", 0.0)
+        self._over = threading.Event()
+        if not quiet and sys.stderr is not None:
+            threading.Thread(target=self._beat, daemon=True).start()
 
     def __call__(self, stage: str) -> None:
-        """Called by the pipeline at the start of every stage."""
-        passed = time.monotonic() - self._started
-        if self._quiet or passed < 1.0:
-            return
-        if self._live:
-            sys.stderr.write(f"\r\x1b[K{passed:5.1f} s  {stage}")
-        else:
-            sys.stderr.write(f"{passed:5.1f} s  {stage}\n")
-        sys.stderr.flush()
-        self._shown = True
+        """Called by the pipeline at the start of every stage, and within long ones."""
+        self._stage = stage
+
+    def _beat(self) -> None:
+        while not self._over.wait(0.25):
+            passed = time.monotonic() - self._started
+            if passed < 1.0 or not self._stage:
+                continue
+            if self._live:
+                self._write(f"\r\x1b[K{passed:5.1f} s  {self._stage}")
+            elif self._stage != self._told[0] or passed - self._told[1] >= 10.0:
+                self._told = (self._stage, passed)
+                self._write(f"{passed:5.1f} s  {self._stage}\n")
+
+    def _write(self, text: str) -> None:
+        try:
+            sys.stderr.write(text)
+            sys.stderr.flush()
+        except (OSError, ValueError):
+            self._over.set()
 
     def done(self) -> None:
-        """Clear the line that was used for progress."""
-        if self._live and self._shown:
-            sys.stderr.write("\r\x1b[K")
-            sys.stderr.flush()
+        """Stop, and clear the line that was used for progress."""
+        self._over.set()
+        if self._live:
+            self._write("\r\x1b[K")
+
+    def __enter__(self) -> Progress:
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self.done()

@@ -104,7 +104,7 @@ def _beats(verdict: Verdict) -> list[str]:
             f"  {beats.visibility_far[row]:7.2f}  {beats.grade[row]:<8} {who}"
         )
     rows.append(
-        f"  Anything not listed stays below {beats.bound_visibility:.2g} times threshold at the reading distance"
-        f" and {beats.bound_visibility_far:.2g} at the far one."
+        f"  No combination that is not listed exceeds {beats.bound_visibility:.2g} times threshold at the reading"
+        f" distance; from far {beats.bound_visibility_far:.2g} up to 1 mm, {beats.bound_visibility_far_coarse:.2g} above."
     )
     return rows

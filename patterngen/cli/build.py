@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from patterngen.cli._options import Progress, job_options, print_json
+from patterngen.cli._options import Progress, job_options, print_json, print_words
 
 
 @click.command("build")
@@ -41,14 +41,13 @@ def command(
     from patterngen.cli._report import report
     from patterngen.writers import verdict as verdict_writer
 
-    progress = Progress(quiet=quiet)
-    proof = pipeline.prove(patterngen.load(preset, overrides), progress=progress)
-    folder = pipeline.write(proof, Path(out), keep_failed=keep_failed, progress=progress)
-    progress.done()
+    with Progress(quiet=quiet) as progress:
+        proof = pipeline.prove(patterngen.load(preset, overrides), progress=progress)
+        folder = pipeline.write(proof, Path(out), keep_failed=keep_failed, progress=progress)
     if as_json:
         print_json(verdict_writer.document(proof.verdict))
     elif not quiet:
-        click.echo(report(proof.verdict, everything=everything))
+        print_words(report(proof.verdict, everything=everything))
         files = ", ".join(sorted(path.name for path in folder.iterdir() if not path.name.startswith(".")))
-        click.echo(f"\nWritten to {folder}: {files}")
+        print_words(f"\nWritten to {folder}: {files}")
     return 1 if proof.verdict.status == "fail" else 0

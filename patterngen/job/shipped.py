@@ -54,6 +54,12 @@ def new(kind: str) -> str:
     return known[kind].path.read_text(encoding="utf-8")
 
 
+def artwork(kind: str) -> tuple[Path, ...]:
+    """The pictures and outlines that a shipped preset names, where they lie."""
+    text = new(kind)
+    return tuple(path for path in sorted(folder().glob("art/*")) if f'"art/{path.name}"' in text)
+
+
 def _opening_comment(text: str) -> str:
     lines = []
     for line in text.splitlines():
