@@ -10,7 +10,9 @@ from __future__ import annotations
 import hashlib
 import os
 import stat
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
 from pathlib import Path
 
 from patterngen.errors import Fault, InputError, MachineError
@@ -66,36 +68,68 @@ def _refuse_special(status: os.stat_result, refuse: object) -> None:
         raise refuse(kinds.get(stat.S_IFMT(status.st_mode), "is something special"), allowed="a plain file")
 
 
-def write_atomically(path: Path, data: bytes | Iterable[bytes]) -> str:
-    """Put a file into place whole: temporary beside it, flush, fsync, read back, rename, fsync the folder.
+@dataclass(frozen=True, slots=True)
+class Staged:
+    """A whole file under a temporary name beside its own: `put` gives it its name, `drop` takes it away."""
 
-    Returns the SHA-256 (hex) of what was written and read back.  Raises `InputError` where
-    the name is taken by a link, folder or pipe, `MachineError` where the machine fails;
-    then an older file of that name is untouched, and at most a file `.<name>.<process>.part`
-    is left, never one under the final name.
+    path: Path
+    part: Path
+    sha256: str
+    size: int
+
+    def put(self) -> None:
+        """Take the final name.  The folder is not flushed.  Raises `MachineError`."""
+        with _told(self.path):
+            self.part.replace(self.path)
+
+    def drop(self) -> None:
+        """Remove the temporary, if it is still there."""
+        _forget(self.part)
+
+
+def stage(path: Path, data: bytes | Iterable[bytes]) -> Staged:
+    """Write a file beside its final name: flushed, fsynced, read back and compared.
+
+    Pieces are written as they come, so that a long file need never be whole in memory.
+    Raises `InputError` where the name is taken by a link, folder or pipe, `MachineError`
+    where the machine fails; then no temporary is left.  Only a process that is killed leaves
+    one, `.<name>.<process>.part`.
     """
     path = Path(path)
-    _refuse_target(path)
+    refuse_odd_target(path)
     part = path.with_name(f".{path.name}.{os.getpid()}.part")
-    wanted = hashlib.sha256()
+    wanted, size = hashlib.sha256(), 0
     try:
-        with part.open("wb") as file:
-            for piece in (data,) if isinstance(data, bytes) else data:
-                wanted.update(piece)
-                file.write(piece)
-            file.flush()
-            os.fsync(file.fileno())
-        if digest_of(part) != wanted.hexdigest():
-            raise OSError("what was written is not what can be read back")
-        part.replace(path)
-        _sync_folder(path.parent)
-    except OSError as error:
-        _forget(part)
-        raise MachineError(f"{path}: could not be written ({_cause(error)})") from error
+        with _told(path):
+            with part.open("wb") as file:
+                for piece in (data,) if isinstance(data, bytes) else data:
+                    wanted.update(piece)
+                    size += len(piece)
+                    file.write(piece)
+                file.flush()
+                os.fsync(file.fileno())
+            if digest_of(part) != wanted.hexdigest():
+                raise OSError("what was written is not what can be read back")
     except BaseException:
         _forget(part)
         raise
-    return wanted.hexdigest()
+    return Staged(path, part, wanted.hexdigest(), size)
+
+
+def write_atomically(path: Path, data: bytes | Iterable[bytes]) -> str:
+    """Put a file into place whole: `stage`, rename, fsync the folder.
+
+    Returns the SHA-256 (hex) of what was written and read back.  Raises as `stage` does; then
+    an older file of that name is untouched.
+    """
+    staged = stage(path, data)
+    try:
+        staged.put()
+        sync_folder(staged.path.parent)
+    except BaseException:
+        staged.drop()
+        raise
+    return staged.sha256
 
 
 def digest_of(path: Path) -> str:
@@ -104,7 +138,8 @@ def digest_of(path: Path) -> str:
         return hashlib.file_digest(file, "sha256").hexdigest()
 
 
-def _refuse_target(path: Path) -> None:
+def refuse_odd_target(path: Path) -> None:
+    """Raise `InputError` where a link, a folder or a pipe stands in the place of a file to write."""
     try:
         status = path.lstat()
     except FileNotFoundError:
@@ -132,12 +167,22 @@ def _refuse_target(path: Path) -> None:
         )
 
 
-def _sync_folder(folder: Path) -> None:
-    handle = os.open(folder, os.O_RDONLY | getattr(os, "O_DIRECTORY", 0))
+def sync_folder(folder: Path) -> None:
+    """Flush the names in a folder to the disk.  Raises `MachineError`."""
+    with _told(folder):
+        handle = os.open(folder, os.O_RDONLY | getattr(os, "O_DIRECTORY", 0))
+        try:
+            os.fsync(handle)
+        finally:
+            os.close(handle)
+
+
+@contextmanager
+def _told(path: Path) -> Iterator[None]:
     try:
-        os.fsync(handle)
-    finally:
-        os.close(handle)
+        yield
+    except OSError as error:
+        raise MachineError(f"{path}: could not be written ({_cause(error)})") from error
 
 
 def _forget(part: Path) -> None:

@@ -26,11 +26,12 @@ class Written:
     size: int
 
 
-def dumps(job: Job, files: Mapping[str, Written]) -> bytes:
+def dumps(job: Job, files: Mapping[str, Written], *, verdict: str | None = None) -> bytes:
     """The manifest of a job's files, sorted by name.
 
-    It holds the preset as it was used and its digest, the program's version, and the seeds
-    by name, but never what a seed was made from in secret.
+    It holds the `verdict` ("pass", "warn", "fail"; None: not judged), the preset as it was
+    used and its digest, the digests of the artwork that it names, the program's version, and
+    the seeds by name, but never what a seed was made from in secret.
     """
     seeds = {screen.name: screen.params["seed"] for screen in job.screens if "seed" in screen.params}
     return encode(
@@ -38,7 +39,9 @@ def dumps(job: Job, files: Mapping[str, Written]) -> bytes:
             "patterngen": FORMAT,
             "version": patterngen.__version__,
             "job": job.name,
+            "verdict": verdict,
             "preset": {"sha256": hashlib.sha256(job.text.encode()).hexdigest(), "text": job.text},
+            "artwork": plain(dict(sorted(getattr(job, "artwork", {}).items()))),
             "seeds": plain(seeds),
             "files": {name: {"sha256": files[name].sha256, "bytes": files[name].size} for name in sorted(files)},
         }

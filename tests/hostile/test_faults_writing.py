@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import errno
 import os
 import resource
@@ -16,7 +17,7 @@ from pathlib import Path
 import pytest
 
 from patterngen.errors import MachineError
-from patterngen.writers import manifest
+from patterngen.writers import _files, manifest
 from patterngen.writers._files import job_folder
 from tests import drawings
 
@@ -39,10 +40,13 @@ def contents(folder: Path) -> dict[str, bytes]:
 
 
 def check_nothing_is_torn(folder: Path) -> None:
-    for name, data in contents(folder).items():
-        if not name.endswith(".part") and name != "manifest.json":
-            assert data in (OLD[name], NEW[name]), name
-    if (folder / "manifest.json").exists():
+    """Every file is an old or a new one, and beside a manifest all are of one run."""
+    found = {name: data for name, data in contents(folder).items() if not name.startswith(".")}
+    finished = found.pop("manifest.json", None)
+    for name, data in found.items():
+        assert data in (OLD[name], NEW[name]), name
+    if finished is not None:
+        assert found in (OLD, NEW)
         assert manifest.differences(folder) == []
 
 
@@ -95,7 +99,7 @@ class KillAt:
 
 def test_killed_at_every_step(tmp_path: Path, clean: dict[str, bytes]) -> None:
     """Killed at its first, second, third … call until it gets through; each time the rest is whole."""
-    kills = 0
+    kills, seen = 0, set()
     for n in range(1, 200):
         out = tmp_path / f"run{n}"
         folder = write(out, OLD)
@@ -107,6 +111,7 @@ def test_killed_at_every_step(tmp_path: Path, clean: dict[str, bytes]) -> None:
 
         status = in_child(work)
         check_nothing_is_torn(folder)
+        seen.add((contents(folder)["base.pdf"] == NEW["base.pdf"], (folder / "manifest.json").exists()))
         if os.WIFEXITED(status):
             assert os.WEXITSTATUS(status) == 0
             break
@@ -114,6 +119,8 @@ def test_killed_at_every_step(tmp_path: Path, clean: dict[str, bytes]) -> None:
         check_rerun(out, clean)
         shutil.rmtree(out)
     assert kills > 10
+    # the old job, nothing finished, the new job
+    assert seen == {(False, True), (False, False), (True, False), (True, True)}
 
 
 @pytest.mark.parametrize("kilobytes", [4, 64, 700, 790])
@@ -125,13 +132,12 @@ def test_file_size_limit(tmp_path: Path, clean: dict[str, bytes], kilobytes: int
         resource.setrlimit(resource.RLIMIT_FSIZE, (kilobytes * 1024,) * 2)
         write(tmp_path / "out", NEW)
 
+    before = contents(folder)
     status = in_child(work)
     if kilobytes * 1024 < len(NEW["base.pdf"]):
         assert os.WEXITSTATUS(status) == 3
-        assert (folder / "base.pdf").read_bytes() == OLD["base.pdf"]
+        assert contents(folder) == before
     check_nothing_is_torn(folder)
-    assert not list(folder.glob(".*"))
-    assert not (folder / "manifest.json").exists() or os.WEXITSTATUS(status) == 0
     check_rerun(tmp_path / "out", clean)
 
 
@@ -142,6 +148,7 @@ def test_nth_call_fails(
 ) -> None:
     """A flush or rename that fails is told as the machine's fault; what was there stays whole."""
     folder = write(tmp_path / "out", OLD)
+    before = contents(folder)
     real, seen = getattr(os, call), 0
 
     def failing(*args: object, **named: object) -> object:
@@ -159,15 +166,19 @@ def test_nth_call_fails(
         else:
             with pytest.raises(MachineError):
                 write(tmp_path / "out", NEW)
-            assert not list(folder.glob(".*.part"))
+            assert not list(folder.glob(".*"))
+        if call == "fsync" and n <= len(NEW) + 1:
+            # the files and the manifest waiting beside the old ones
+            assert contents(folder) == before
     check_nothing_is_torn(folder)
     check_rerun(tmp_path / "out", clean)
 
 
 def test_two_writers_and_a_reader(tmp_path: Path) -> None:
-    """Two processes write one job at once; whoever reads sees one of the two drawings, whole."""
+    """Two processes write one job at once; every file read is whole, and a manifest's digests never mix two runs."""
     out = tmp_path / "out"
     folder = write(out, OLD)
+    manifests = {(folder / "manifest.json").read_bytes(), (write(tmp_path / "b", NEW) / "manifest.json").read_bytes()}
     children = []
     for files in (OLD, NEW):
         with warnings.catch_warnings():
@@ -176,9 +187,8 @@ def test_two_writers_and_a_reader(tmp_path: Path) -> None:
         if child == 0:
             status = 1
             try:
-                for _ in range(40):
-                    with job_folder(out, "wrapper") as own:
-                        own.write("base.pdf", files["base.pdf"])
+                for _ in range(30):
+                    write(out, files)
                 status = 0
             finally:
                 os._exit(status)
@@ -188,6 +198,8 @@ def test_two_writers_and_a_reader(tmp_path: Path) -> None:
         data = (folder / "base.pdf").read_bytes()
         assert data in (OLD["base.pdf"], NEW["base.pdf"])
         seen.add(data[:3])
+        with contextlib.suppress(FileNotFoundError):
+            assert (folder / "manifest.json").read_bytes() in manifests
         reads += 1
         done, status = os.waitpid(children[0], os.WNOHANG)
         if done:
@@ -195,13 +207,40 @@ def test_two_writers_and_a_reader(tmp_path: Path) -> None:
             children.remove(done)
     assert reads > 20
     assert seen == {b"old", b"new"}
+    assert not list(folder.glob(".*"))
+    check_nothing_is_torn(folder)
+    assert (folder / "manifest.json").exists()
+
+
+def test_the_lock_goes_with_the_process_that_held_it(tmp_path: Path, clean: dict[str, bytes]) -> None:
+    """Killed between two files it keeps nobody waiting; a living holder does."""
+    out = tmp_path / "out"
+    folder = write(out, OLD)
+    here, there = os.pipe()
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", DeprecationWarning)
+        child = os.fork()
+    if child == 0:
+        with job_folder(out, "wrapper") as own:
+            own.write("base.pdf", NEW["base.pdf"])
+            os.write(there, b"!")
+            signal.pause()
+    assert os.read(here, 1) == b"!"
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(_files, "WAIT_S", 0.1)
+        with pytest.raises(MachineError, match="another run"):
+            write(out, NEW)
+        os.kill(child, signal.SIGKILL)
+        os.waitpid(child, 0)
+        assert manifest.differences(folder) == []
+        check_rerun(out, clean)
 
 
 IN_NAMESPACE = """
 import sys
 sys.path.insert(0, sys.argv[2])
 from pathlib import Path
-from tests.hostile.test_faults_writing import NEW, OLD, check_nothing_is_torn, write
+from tests.hostile.test_faults_writing import NEW, OLD, check_nothing_is_torn, contents, write
 from patterngen.errors import MachineError
 out = Path(sys.argv[1])
 if sys.argv[3] == "old":
@@ -211,7 +250,8 @@ else:
         write(out, NEW)
     except MachineError as error:
         print(error)
-        assert not list((out / "wrapper").glob(".*.part"))
+        # the old job, finished as it was, and nothing else
+        assert sorted(contents(out / "wrapper")) == sorted([*OLD, "manifest.json"])
         assert (out / "wrapper" / "base.pdf").read_bytes() == OLD["base.pdf"]
         check_nothing_is_torn(out / "wrapper")
         sys.exit(3)

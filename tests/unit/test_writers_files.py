@@ -5,17 +5,17 @@ from __future__ import annotations
 import hashlib
 import json
 import os
-import subprocess
-import sys
+from collections.abc import Iterator
 from dataclasses import replace
 from pathlib import Path
+from typing import cast
 
 import pytest
 
-from patterngen.errors import InputError
+from patterngen.errors import InputError, MachineError
 from patterngen.model.area import Area, ToneField
 from patterngen.model.job import Gain, Job, ScreenRequest
-from patterngen.writers import manifest
+from patterngen.writers import _files, manifest
 from patterngen.writers._files import job_folder
 from tests import drawings
 
@@ -90,28 +90,77 @@ def test_a_manifest_reaches_no_file_outside(tmp_path: Path) -> None:
     assert manifest.differences(inner) == ["../x: not a name of a file in this folder"]
 
 
+def test_the_manifest_tells_verdict_and_artwork() -> None:
+    """A job that failed says so, and its artwork is listed by path with its digest, sorted."""
+    job = drawings.job()
+    data = json.loads(manifest.dumps(job, {}, verdict="fail"))
+    assert (data["verdict"], data["artwork"]) == ("fail", {})
+
+    class WithArtwork:
+        def __getattr__(self, name: str) -> object:
+            return {"b.svg": "22", "a.png": "11"} if name == "artwork" else getattr(job, name)
+
+    data = json.loads(manifest.dumps(cast("Job", WithArtwork()), {}))
+    assert list(data["artwork"].items()) == [("a.png", "11"), ("b.svg", "22")]
+    assert data["verdict"] is None
+
+
 def test_drawings_of_an_earlier_run_do_not_stay_beside_a_failed_verdict(tmp_path: Path) -> None:
     old = {"base.pdf": b"1", "base.svg": b"2", "key.svg": b"3", "key-seal.pdf": b"4", "overlay.html": b"5"}
     folder = write(tmp_path, {**old, "verdict.json": b"{}"})
     (folder / "notes.txt").write_text("the user's own")
-    with job_folder(tmp_path, "wrapper") as again:
-        again.write("verdict.json", b'{"verdict": "fail"}')
-        assert names(folder) == ["notes.txt", "overlay.html", "verdict.json"]
-        again.finish(manifest.dumps(drawings.job(), again.written))
+    write(tmp_path, {"verdict.json": b'{"verdict": "fail"}'})
     assert names(folder) == ["manifest.json", "notes.txt", "verdict.json"]
 
 
-def test_the_manifest_goes_before_anything_changes(tmp_path: Path) -> None:
-    folder = write(tmp_path, {"base.pdf": b"1", "verdict.json": b"{}"})
+@pytest.mark.parametrize("stop", [KeyboardInterrupt, MachineError, ZeroDivisionError])
+def test_what_stops_before_the_end_leaves_the_old_job(tmp_path: Path, stop: type[BaseException]) -> None:
+    folder = write(tmp_path, {"base.pdf": b"1", "base.svg": b"2", "verdict.json": b"{}"})
+    before = {path.name: path.read_bytes() for path in folder.iterdir()}
 
-    def interrupted() -> None:
+    def stopped() -> None:
         with job_folder(tmp_path, "wrapper") as again:
-            again.write("base.pdf", b"2")
-            raise KeyboardInterrupt
+            again.write("base.pdf", b"3")
+            again.write("verdict.json", b"4")
+            raise stop
 
-    with pytest.raises(KeyboardInterrupt):
-        interrupted()
-    assert names(folder) == ["base.pdf", "verdict.json"]
+    with pytest.raises(stop):
+        stopped()
+    assert {path.name: path.read_bytes() for path in folder.iterdir()} == before
+    assert manifest.differences(folder) == []
+
+
+def test_what_is_never_finished_is_not_there(tmp_path: Path) -> None:
+    folder = write(tmp_path, {"base.pdf": b"1"})
+    with job_folder(tmp_path, "wrapper") as again:
+        again.write("base.pdf", b"2")
+    assert (folder / "base.pdf").read_bytes() == b"1"
+    assert names(folder) == ["base.pdf", "manifest.json"]
+
+
+def test_a_link_put_in_a_files_place_meanwhile_is_refused_in_time(tmp_path: Path) -> None:
+    folder = write(tmp_path, {"verdict.json": b"{}"})
+    with pytest.raises(InputError, match="a link"), job_folder(tmp_path, "wrapper") as again:
+        again.write("base.pdf", b"1")
+        (folder / "base.pdf").symlink_to(tmp_path / "elsewhere")
+        again.finish(manifest.dumps(drawings.job(), again.written))
+    assert manifest.differences(folder) == []
+
+
+def test_pieces_are_written_as_they_come(tmp_path: Path) -> None:
+    folder = tmp_path / "wrapper"
+
+    def pieces() -> Iterator[bytes]:
+        yield b"<svg>"
+        assert len(list(folder.glob(".base.svg.*.part"))) == 1
+        yield b"</svg>"
+
+    with job_folder(tmp_path, "wrapper") as own:
+        own.write("base.svg", pieces())
+        assert own.written["base.svg"].size == 11
+        own.finish(manifest.dumps(drawings.job(), own.written))
+    assert (folder / "base.svg").read_bytes() == b"<svg></svg>"
+    assert manifest.differences(folder) == []
 
 
 def test_nothing_changes_before_the_first_write(tmp_path: Path) -> None:
@@ -125,16 +174,28 @@ def test_nothing_changes_before_the_first_write(tmp_path: Path) -> None:
     assert not (tmp_path / "fresh").exists()
 
 
-def test_temporaries_of_dead_runs_are_cleared_and_of_living_ones_left(tmp_path: Path) -> None:
+def test_temporaries_of_killed_runs_are_cleared_and_strangers_files_left(tmp_path: Path) -> None:
     folder = tmp_path / "wrapper"
     folder.mkdir()
-    gone = subprocess.run([sys.executable, "-c", "import os; print(os.getpid())"], capture_output=True, check=True)
-    dead = f".base.pdf.{int(gone.stdout)}.part"
-    living = f".base.svg.{os.getppid()}.part"
-    for name in (dead, living, ".hidden"):
+    # a process number that has been given again tells nothing: who holds the lock writes alone
+    ours = [f".base.pdf.{os.getppid()}.part", ".key-seal.svg.7.part", ".manifest.json.8.part", ".lock"]
+    others = [".hidden", ".notes.txt.9.part", ".base.pdf.part"]
+    for name in ours + others:
         (folder / name).write_bytes(b"half")
     write(tmp_path, {"verdict.json": b"{}"})
-    assert names(folder) == sorted([living, ".hidden", "manifest.json", "verdict.json"])
+    assert names(folder) == sorted([*others, "manifest.json", "verdict.json"])
+
+
+def test_a_second_writer_is_told(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """It waits, gives up naming the folder, and harms nothing; once the first is done it gets in."""
+    monkeypatch.setattr(_files, "WAIT_S", 0.1)
+    with job_folder(tmp_path, "wrapper") as first:
+        first.write("base.pdf", b"1")
+        with pytest.raises(MachineError, match="wrapper: another run"), job_folder(tmp_path, "wrapper") as second:
+            second.write("base.pdf", b"2")
+        first.finish(manifest.dumps(drawings.job(), first.written))
+    assert manifest.differences(tmp_path / "wrapper") == []
+    assert (write(tmp_path, {"base.pdf": b"3"}) / "base.pdf").read_bytes() == b"3"
 
 
 def test_same_files_same_bytes(tmp_path: Path) -> None:
