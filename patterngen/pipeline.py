@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Literal
 
@@ -21,9 +21,13 @@ from patterngen.model.verdict import Finding, Verdict
 
 if TYPE_CHECKING:
     from patterngen.beats.own import OwnTexture
+    from patterngen.beats.together import Together
     from patterngen.colour.inks import InkStack
 
 Stage = Callable[[str], None]
+
+_DARKEST_PAPER_Y = 0.0299
+"""Y of a paper at L 20."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -62,15 +66,24 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     from patterngen.rules import _engine, _limits
 
     tell = progress or _silent
-    _refuse_choose(job)
+    where = f"{job.name}.toml" if job.folder else job.name
+    colours = InkStack.of(job)
+    faults = [
+        *_choose_faults(job, where),
+        *_engine.waiver_faults(job.waivers, where=where),
+        *_paper_faults(job, colours, where),
+    ]
+    if faults:
+        raise InputError(faults)
     tell("deriving what was left open")
-    _engine.check_waivers(job.waivers)
     job = _engine.derive(job)
-    if faults := too_much(job, where=job.name):
+    if faults := too_much(job, where=where):
         raise InputError(faults)
     design = make_design(job)
     screens = design.base.screens
-    colours = InkStack.of(job)
+    places = Together(screens, job.overprints, job.sheet)
+    job = replace(job, remarks=(*job.remarks, *_remarks(places)))
+    design = replace(design, job=job)
     viewer = viewer_of(job, colours)
     limits = {**_limits.limits(job.press.process), **job.press.limits}
     tell("finding beats")
@@ -85,7 +98,6 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         shadow=limits["shadow"].value,
     )
     tell("judging")
-    places = Together(screens, job.overprints, job.sheet)
     together = places.rows(window_mm=0.0)
     extremes = {screen.name: tone_extremes(screen) for screen in screens}
     eye = registry.load("patterngen.vision", job.viewing.eye)
@@ -232,20 +244,36 @@ def _imager_cell(screen: Screen, press: Press) -> dict[str, Any] | None:
     }
 
 
-def _refuse_choose(job: Job) -> None:
-    """ "choose" is a question to the search, not a value that can be built."""
-    faults = [
+def _choose_faults(job: Job, where: str) -> list[Fault]:
+    """"choose" is a question to the search, not a value that can be built."""
+    return [
         Fault(
-            job.name,
+            where,
             f"screen.{screen.name}.{key}",
             '"choose" is for the search',
-            allowed=f"a value, or nothing (then the usual one is derived); `patterngen angles` proposes {key}s",
+            allowed="a value, or nothing (then the usual one is derived); the command `patterngen angles` "
+            "that answers it is not part of this version",
         )
         for screen in job.screens
         for key in screen.params.get("choose", ())
     ]
-    if faults:
-        raise InputError(faults)
+
+
+def _paper_faults(job: Job, colours: InkStack, where: str) -> list[Fault]:
+    """Contrast on a paper that reflects next to nothing has no meaning."""
+    if paper_y(colours) >= _DARKEST_PAPER_Y:
+        return []
+    lab = ", ".join(f"{part:g}" for part in job.paper_lab)
+    return [Fault(where, "paper.lab", "a paper too dark to print on", value=f"[{lab}]", allowed="L of 20 or more")]
+
+
+def _remarks(places: Together) -> tuple[str, ...]:
+    """What only shows once the areas are laid on each other."""
+    return tuple(
+        f"{one} and {other} are said never to meet, but their screens print on common ground: "
+        "they are not judged together there"
+        for one, other in places.meeting_though_never()
+    )
 
 
 def _silent(stage: str) -> None:

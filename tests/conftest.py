@@ -5,6 +5,11 @@ from __future__ import annotations
 import os
 
 import pytest
+from hypothesis import settings
+
+# the same examples every time: a failure is a failure of the change at hand
+settings.register_profile("same-every-time", derandomize=True, deadline=None)
+settings.load_profile("same-every-time")
 
 
 def pytest_sessionfinish(session: pytest.Session, exitstatus: int) -> None:

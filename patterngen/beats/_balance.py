@@ -172,7 +172,7 @@ def _promising(over: Superposition, hits: Hits, rank: int) -> list[tuple[Complex
         ranked.append((float(relative.max()), int(row), amplitude))
     ranked.sort(key=lambda item: (-item[0], item[1]))
     counting = sorted(ranked, key=lambda item: (-item[0] * over.weight[item[1]], item[1]))
-    chosen = {row: (strength, row, amplitude) for strength, row, amplitude in ranked[:_TONE_ROWS] + counting[:_TONE_ROWS]}
+    chosen = {item[1]: item for item in ranked[:_TONE_ROWS] + counting[:_TONE_ROWS]}
     out = []
     for strength, row, amplitude in chosen.values():
         if strength > 0.0:

@@ -102,8 +102,9 @@ class Superposition:
     """
 
     def __init__(
-        self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows, *, shadow: float = 0.0
-    ) -> None:
+        self, screens: Sequence[Screen], grids: Sequence[Grid], colours: InkColours, rows: ToneRows, *,
+        shadow: float = 0.0,
+    ) -> None:  # fmt: skip
         self.screens, self.grids, self.colours, self.rows = tuple(screens), tuple(grids), colours, rows
         self._shadow = shadow
         self.combs = tuple(grid for grid in grids if grid.samples)

@@ -35,8 +35,9 @@ def find_beats(
     bounds stand in the table.  A sampling grid cancels any length, so with one the bound is
     weaker.  A period longer than the sheet's diagonal is balance: a `Balance`, and one row of
     the table whose contrast is that of the mean.  Tones whose mean luminance is below `shadow`
-    (share of the paper's) count less in proportion in the `judged` columns.  Raises `InputError` when more than one grid
-    samples.
+    (share of the paper's) count less in proportion in the `judged` columns.
+
+    Raises `InputError` when more than one grid samples.
 
     Sources: Neugebauer 1937 with Demichel's weights; combinations of orders as in Amidror,
     The Theory of the Moire Phenomenon, volume I, chapter 2.

@@ -108,6 +108,19 @@ class Together:
         rows = _split_never(np.concatenate([np.zeros((0, len(self.screens))), *found]), self.screens, self.overprints)
         return np.unique(rows[(rows > 0).any(axis=1)], axis=0)
 
+    def meeting_though_never(self) -> tuple[tuple[str, str], ...]:
+        """Pairs of inks that are said never to meet and whose screens print on common ground all the same."""
+        found = []
+        printing = {
+            frozenset(screen.ink for screen, prints in zip(self.screens, region.printing, strict=True) if prints)
+            for region in self._regions
+        }
+        for overprint in self.overprints:
+            for pair in combinations(sorted(overprint.inks), 2) if overprint.never else ():
+                if any(set(pair) <= inks for inks in printing):
+                    found.append(pair)
+        return tuple(dict.fromkeys(found))
+
     def most_ink(self) -> float:
         """The largest sum of printed tones in one place; screens of one ink overlap and do not add up."""
         samples = np.unique(self.samples(window_mm=0.0), axis=0)
@@ -115,7 +128,7 @@ class Together:
         for i, screen in enumerate(self.screens):
             left = 1.0 - np.asarray(screen.printed_tone(samples[:, i]))
             open_paper[screen.ink] = open_paper.get(screen.ink, np.ones(len(samples))) * left
-        return float(sum(1.0 - left for left in open_paper.values()).max(initial=0.0)) if open_paper else 0.0
+        return float(np.sum([1.0 - left for left in open_paper.values()], axis=0).max(initial=0.0))
 
     def _sampled(self, region: _Region, window_mm: float) -> FloatArray:
         core = region.core(window_mm)

@@ -105,6 +105,7 @@ def _beats(verdict: Verdict) -> list[str]:
         )
     rows.append(
         f"  No combination that is not listed exceeds {beats.bound_visibility:.2g} times threshold at the reading"
-        f" distance; from far {beats.bound_visibility_far:.2g} up to 1 mm, {beats.bound_visibility_far_coarse:.2g} above."
+        f" distance;\n  from far {beats.bound_visibility_far:.2g} for periods up to 1 mm,"
+        f" {beats.bound_visibility_far_coarse:.2g} for longer ones."
     )
     return rows

@@ -32,10 +32,10 @@ def command(
     patterngen verify mine.toml --json > verdict.json
     patterngen verify --files out/mine
     """
-    if (preset is None) == (files is None):
-        raise click.UsageError("give a PRESET, or --files DIR, and not both")
-    if files is not None:
+    if files is not None and preset is None:
         return _files(Path(files), as_json=as_json, quiet=quiet)
+    if preset is None or files is not None:
+        raise click.UsageError("give a PRESET, or --files DIR, and not both")
     import patterngen
     from patterngen.cli._report import report
     from patterngen.writers import verdict as verdict_writer

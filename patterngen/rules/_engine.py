@@ -15,7 +15,7 @@ from math import inf
 from types import ModuleType
 
 from patterngen import registry
-from patterngen.errors import Fault, InputError
+from patterngen.errors import Fault
 from patterngen.model.evidence import Evidence
 from patterngen.model.job import Job, Waiver
 from patterngen.model.verdict import Finding, Measurement, Status
@@ -64,10 +64,9 @@ def derive(job: Job) -> Job:
 def judge(evidence: Evidence, waivers: Sequence[Waiver] | None = None) -> tuple[Finding, ...]:
     """Every rule's findings, worst first; `waivers` are the job's own where none are given.
 
-    Raises `InputError` for a waiver that names no judging rule.
+    Waivers of rules that do not judge are of no effect here: see `waiver_faults`.
     """
     waivers = evidence.design.job.waivers if waivers is None else waivers
-    check_waivers(waivers)
     findings: list[Finding] = []
     for name in judging():
         module = registry.load(PACKAGE, name)
@@ -111,24 +110,23 @@ def _margin(measurement: Measurement, limit: float) -> float:
     return 0.0 if abs(margin) <= 1e-9 * abs(limit) else margin
 
 
-def check_waivers(waivers: Sequence[Waiver]) -> None:
-    """Refuse waivers of rules that do not exist or do not judge.  Raises `InputError`."""
+def waiver_faults(waivers: Sequence[Waiver], *, where: str) -> list[Fault]:
+    """A fault for every waiver of a rule that does not exist or does not judge; `where` names the preset."""
     faults = []
-    for waiver in waivers:
+    for place, waiver in enumerate(waivers):
         if waiver.rule not in judging():
             near = get_close_matches(waiver.rule, judging(), n=1, cutoff=0.3)
             faults.append(
                 Fault(
-                    "",
-                    "waive.rule",
+                    where,
+                    f"waive[{place}].rule",
                     "no rule that judges has this name",
                     value=repr(waiver.rule),
                     allowed=", ".join(judging()),
                     nearest=near[0] if near else "",
                 )
             )
-    if faults:
-        raise InputError(faults)
+    return faults
 
 
 def _waived(rule: str, findings: list[Finding], waivers: Sequence[Waiver]) -> list[Finding]:

@@ -64,7 +64,7 @@ def _free(evidence: Evidence, others: list[Screen]) -> str:
         if all(_off_deg(angle, other) >= apart - 0.5 for other in others)
     ]
     if not free:
-        return "No usual angle is free: change its ruling clearly, or let `patterngen angles` search."
+        return "No usual angle is free: change its ruling clearly."
     return f"Free, {rounded(apart)} degrees from all it meets: {listed(free)}."
 
 

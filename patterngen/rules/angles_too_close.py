@@ -17,8 +17,8 @@ down to one angle, where the colour moves with every slip of register. Drawing i
 lightest ink may stand at 15 because its beats have little contrast. This is a rule of thumb: it warns
 and never fails, for the beats themselves are computed and judged, and a searched set may well break it."""
 MEASURES = """The least angle between any direction of one screen and any direction of the other (so dots
-repeat after 90 degrees, lines after 180), in whole degrees as the rule is spoken, for every two inks
-that are both screened in one place and whose rulings differ by less than a quarter."""
+repeat after 90 degrees, lines after 180), for every two inks that are both screened in one place and
+whose rulings differ by less than a quarter."""
 SOURCES = ("trade-thirty-degrees", "trade-forty-five-safest", "trade-same-angle")
 LIMITS = ("angle_apart", "angle_apart_light")
 IDLE = "No two inks of like ruling are screened in one place."
@@ -38,10 +38,11 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         limit = evidence.limits["angle_apart_light" if light in (a.ink, b.ink) else "angle_apart"]
         off = screens_apart_deg(a, b)
         stand = f"stand {degrees(off)} apart" if off >= 0.05 else "stand at one angle"
-        inks = "the lightest ink and another keep" if light in (a.ink, b.ink) else "drawing inks keep"
+        paler = a if a.ink == light else b
+        inks = f"{paler.name} is the lightest ink and keeps" if light in (a.ink, b.ink) else "drawing inks keep"
         yield against(
             limit,
-            float(round(off)),
+            round(off, 2),
             where=f"{a.name} and {b.name}",
             message=f"{a.name} and {b.name} {stand}; {inks} {rounded(limit.value)} degrees.",
             bad_when="below",

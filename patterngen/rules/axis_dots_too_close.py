@@ -16,7 +16,7 @@ REASON = """Elliptical dots and others that join along one axis first repeat onl
 Their chains act like a line screen, so three drawing inks use the whole half turn, 60 degrees apart, as
 15, 75 and 135, with the lightest ink at 0."""
 MEASURES = """The angle between the axes of two inks that are both screened in one place with dots that
-have an axis, in whole degrees; the lightest ink needs only its own distance. Warns and never fails:
+have an axis; the lightest ink needs only its own distance. Warns and never fails:
 beats are judged for themselves."""
 SOURCES = ("trade-axis-dots", "iso-12647-2-angles")
 LIMITS = ("angle_apart_axis", "angle_apart_light")
@@ -47,7 +47,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         off = apart_deg(a.angle_deg, b.angle_deg, repeat_deg=180.0)
         yield against(
             limit,
-            float(round(off)),
+            round(off, 2),
             where=f"{a.name} and {b.name}",
             message=(
                 f"{a.name} and {b.name} have dots with an axis, {degrees(off)} apart; "

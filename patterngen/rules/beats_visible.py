@@ -12,7 +12,7 @@ from patterngen.model.verdict import BeatTable, Measurement
 from patterngen.rules._angles import screens_apart_deg
 from patterngen.rules._beats import far_limits, patterns, slower_than_sheet
 from patterngen.rules._examples import dots, preset, usual_set
-from patterngen.rules._words import degrees, listed, rounded, width
+from patterngen.rules._words import degrees, listed, percent, rounded, width
 from patterngen.sources import source
 
 SUMMARY = "screens together make a pattern that is seen from where the print must look even"
@@ -60,7 +60,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
             limit,
             "times threshold",
             listed(list(table.participants(row))),
-            " ".join(filter(None, (_sentence(table, rows, measured / limit), remark, _advice(evidence, row)))),
+            " ".join(filter(None, (_sentence(evidence, rows, measured / limit), remark, _advice(evidence, row)))),
             source("shadow-calibration") if spared else said,
             worst="warn" if spared else "fail",
         )
@@ -107,12 +107,18 @@ def _in_shadow(evidence: Evidence, row: int) -> str:
     )
 
 
-def _sentence(table: BeatTable, rows: list[int], over: float) -> str:
+def _sentence(evidence: Evidence, rows: list[int], over: float) -> str:
+    table = evidence.beats
     row = rows[0]
+    order = {screen.name: place for place, screen in enumerate(evidence.design.base.screens)}
+    tones = [percent(float(table.tones[row, order[name]])) for name in table.participants(row) if name in order]
     who = listed(list(table.participants(row)))
     where = listed([degrees(_band_deg(table, r)) for r in sorted(rows, key=lambda r: _band_deg(table, r))])
     much = f"{rounded(over)} times over the limit" if over >= 1.05 else "just over the limit"
-    return f"{who} make bands {width(float(table.period_mm[row]))} wide, running at {where}, {much}."
+    return (
+        f"{who} make bands {width(float(table.period_mm[row]))} wide, running at {where}, {much} "
+        f"(at {listed(tones)})."
+    )
 
 
 def _band_deg(table: BeatTable, row: int) -> float:
@@ -141,15 +147,25 @@ def _advice(evidence: Evidence, row: int) -> str:
                 f"They stand {degrees(off)} apart: bring them to 30 degrees (two inks alone: 45), "
                 "or give them clearly different rulings."
             )
+        if min(abs(off - usual) for usual in (30.0, 45.0)) > 0.5:
+            return f"They stand {degrees(off)} apart and meet in a higher order: 30 or 45 degrees keep clear of it."
         return (
-            f"They stand {degrees(off)} apart and meet in a higher order, which grows with dark tones: "
-            "turn one of them by a few degrees or change one ruling."
+            f"They stand {degrees(off)} apart and meet in a higher order. {_HIGHER_ORDER}"
         )
-    return f"Three screens or more that nearly cancel make slow bands. {_cure(evidence, row, inked)}"
+    return _cure(evidence, row, inked)
+
+
+_HIGHER_ORDER = (
+    "Such beats are strong only in tones like these: lighten one of the inks there, or change one ruling and "
+    "look again."
+)
 
 
 def _cure(evidence: Evidence, row: int, inked: list[Screen]) -> str:
     """The one screen whose turn would make the combination cancel exactly, where there is one."""
+    names = {screen.name for screen in inked}
+    if any(balance.exact and set(balance.names) == names for balance in evidence.balance):
+        return f"These are in exact balance as they should be; this is a higher order of them. {_HIGHER_ORDER}"
     part = evidence.beats.participants(row)
     total = evidence.beats.frequency_per_mm[row]
     changes = []
@@ -161,10 +177,11 @@ def _cure(evidence: Evidence, row: int, inked: list[Screen]) -> str:
     turn_deg, stretch, screen = min(changes, key=lambda change: abs(change[1] - 1.0))
     if abs(turn_deg) > _LARGEST_TURN_DEG or abs(stretch - 1.0) > _SAME_RULING:
         return (
-            "Move one of them well away, by angle or by ruling; or set all three so that they cancel exactly, "
-            "as 15, 45 and 75 degrees at one ruling do."
+            "Three screens or more that nearly cancel make slow bands. Move one of them well away, by angle or by "
+            "ruling; or set all three so that they cancel exactly, as 15, 45 and 75 degrees at one ruling do."
         )
     return (
+        "Three screens or more that nearly cancel make slow bands. "
         f"They would cancel exactly, and leave only balance, with {screen.name} at "
         f"{degrees((screen.angle_deg + turn_deg) % 180.0)}; "
         "or move one of them well away, by angle or by ruling."

@@ -20,7 +20,7 @@ REASON = """Drawing inks stand 30 degrees apart, and only three do so within the
 dots repeat; the lightest ink, whose beats have the least contrast, goes between two of them at 15. The
 most important ink takes 45, the direction that the eye notices least. Dots with an axis repeat every 180
 degrees and stand 60 apart. A fifth ink finds no place: it takes the angle of the ink it is seldom
-printed with, which is a stopgap; `patterngen angles` searches properly."""
+printed with, which is a stopgap until angles are searched for."""
 DERIVES = """`angle` of every screen with a lattice, one angle an ink. The dominant ink is the darkest,
 unless another carries twice as much (mean tone times darkness on this paper); it gets 45 (135 for dots
 with an axis). Then the others in the order of the ink tables: 15, then 75; the lightest ink of four 0.
@@ -246,8 +246,8 @@ def _place(
         return taken[partner][0], (
             f"No angle is left {degrees(plan.apart_deg)} from the others; "
             f"{ink} shares that of {partner}, {beside}. "
-            "That is doubtful: `patterngen angles` searches properly, "
-            "and an [[overprint]] with never = true says which inks do not meet."
+            "That is doubtful; "
+            "an [[overprint]] with never = true says which inks do not meet."
         )
     widest = int(2 * plan.repeat_deg)
     angle = max((0.5 * i for i in range(widest)), key=lambda a: (plan.room(ink, a, taken), -a))

@@ -117,11 +117,10 @@ def test_a_waiver_without_a_failure_is_warned_of(made_rule) -> None:  # type: ig
 
 
 def test_a_waiver_of_an_unknown_rule_is_refused_with_the_nearest_name() -> None:
-    with pytest.raises(InputError) as caught:
-        _engine.check_waivers(
-            [Waiver("beat-visible", "x"), Waiver("usual-angles", "derives, cannot be waived")]
-        )
-    first, second = caught.value.faults
+    first, second = _engine.waiver_faults(
+        [Waiver("beat-visible", "x"), Waiver("usual-angles", "derives, cannot be waived")], where="lid.toml"
+    )
+    assert (first.where, first.key, second.key) == ("lid.toml", "waive[0].rule", "waive[1].rule")
     assert first.nearest == "beats-visible"
     assert "usual-angles" in second.value
 

@@ -25,8 +25,8 @@ def verdict(**changes: Any) -> Verdict:
         threshold=two([np.inf, 0.002]), visibility=two([0.0, 5.0]), visibility_far=two([0.0, 3.0]),
         components=two([2, 1], dtype=np.int32), tones=two([[0.4, 0.4], [0.4, 0.7]]),
         colour_swing=two([6.5, np.nan]),
-        visibility_far_judged=two([0.0, 3.0]), colour_swing_judged=two([6.5, np.nan]), grade=("unseen", "texture"), bound_visibility=0.4, bound_visibility_far=0.3,
-        bound_visibility_far_coarse=0.1,
+        visibility_far_judged=two([0.0, 3.0]), colour_swing_judged=two([6.5, np.nan]), grade=("unseen", "texture"),
+        bound_visibility=0.4, bound_visibility_far=0.3, bound_visibility_far_coarse=0.1,
     )  # fmt: skip
     balance = Balance(
         names=("cyan", "black"), orders={"cyan": [1, 0], "black": [-1, 0]}, frequency_per_mm=(0.0, 0.0), exact=True,
@@ -63,7 +63,7 @@ def test_agreed_keys() -> None:
     assert data["derived"] == [{"value": "screen.cyan.angle", "is": 15.0, "by": "usual-angles", "because": "as usual"}]
     assert data["screens"][0] == {"name": "cyan", "tone": 0.4, "frequencies_per_mm": [[1.0, 0.0], [0.0, 1.0]]}
     assert data["notes"] == {"remarks": ["a byte order mark was left out"]}
-    assert data["beats_bound"] == {"visibility": 0.4, "visibility_far": 0.3}
+    assert data["beats_bound"] == {"visibility": 0.4, "visibility_far": 0.3, "visibility_far_over_1_mm": 0.1}
 
 
 def test_beats_name_only_those_taking_part() -> None:
