@@ -1,4 +1,4 @@
-"""published: figures of the Mannos & Sakrison response that circulate in print and in public code.
+"""second way: figures of the Mannos & Sakrison response that circulate in public code; at second hand, not counted as published.
 
 Source: mannos-sakrison-1974, at second hand.
 """
