@@ -58,7 +58,7 @@ def _outlines(task: Mapping[str, Any], data: bytes) -> tuple[dict[str, Any], byt
     found = outlines.read(
         data,
         element=task["element"],
-        sheet_height_mm=task["sheet_height_mm"],
+        sheet_mm=tuple(task["sheet_mm"]),
         box_mm=tuple(task["box_mm"]),
         label=task["label"],
     )

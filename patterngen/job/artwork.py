@@ -6,13 +6,15 @@ that makes it fail is named, and the others are still read.
 
 from __future__ import annotations
 
+import hashlib
 import json
 import os
 import signal
 import subprocess
 import sys
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
+from itertools import islice
 from pathlib import Path, PurePosixPath
 from typing import Any
 
@@ -23,13 +25,20 @@ from patterngen.errors import Fault, InputError, MachineError
 from patterngen.files import read_plain_file
 from patterngen.job.artist import MEMORY_BYTES, PROCESSOR_SECONDS
 from patterngen.job.preset import ImageTone, SvgArea
-from patterngen.job.tables import TableReading, shown
+from patterngen.job.tables import TableReading, nearest, shown
 from patterngen.model.area import Area, ToneField
+from patterngen.model.fields import text_problem
 from patterngen.model.job import SheetSize
+from patterngen.units import plain
 
 MOST_SVG_BYTES = 8 << 20
 MOST_PICTURE_BYTES = 128 << 20
 WALL_SECONDS = 60
+_MOST_LISTED = 10_000
+_ENDINGS = {"outlines": (".svg",), "picture": (".png", ".tif", ".tiff", ".jpg", ".jpeg")}
+"""Usual ends of file names, for suggestions only: what a file is, its content tells."""
+_FREE_SHARE = 0.01
+_FREE_MM = 0.2
 
 
 @dataclass(frozen=True)
@@ -39,6 +48,8 @@ class Artwork:
     areas: Mapping[str, Area] = field(default_factory=dict)
     pictures: Mapping[str, tuple[NDArray[np.float32], str]] = field(default_factory=dict)
     remarks: tuple[str, ...] = ()
+    digests: Mapping[str, str] = field(default_factory=dict)
+    """SHA-256 (hex) of every file's bytes, by its path as in the preset."""
 
     def tone(self, path: str, area: Area) -> ToneField:
         """The picture of that screen, fitted into its area's box: aspect kept, centred."""
@@ -49,6 +60,20 @@ class Artwork:
         wide, high = scale * columns, scale * rows
         left, low = (x0 + x1 - wide) / 2, (y0 + y1 - high) / 2
         return ToneField(values=values, box_mm=(left, low, left + wide, low + high), label=label)
+
+
+def free_sides(tone: ToneField, area: Area) -> str:
+    """What a picture that lacks its area's proportions leaves free, in words; empty when that hardly shows."""
+    x0, y0, x1, y1 = area.box_mm
+    left, low, right, high = tone.box_mm
+    for free_mm, whole_mm, sides in (
+        ((x1 - x0 - (right - left)) / 2, x1 - x0, "left and right"),
+        ((y1 - y0 - (high - low)) / 2, y1 - y0, "top and bottom"),
+    ):
+        if free_mm > max(_FREE_SHARE * whole_mm, _FREE_MM):
+            size = " x ".join(plain(round(length, 2)) for length in (x1 - x0, y1 - y0))
+            return f"the picture leaves {plain(round(free_mm, 2))} mm free at the {sides} of its area ({size} mm)"
+    return ""
 
 
 @dataclass(frozen=True)
@@ -78,21 +103,26 @@ def read(
     tasks: dict[tuple[str, ...], _Task] = {}
     wanted: dict[str, tuple[str, ...]] = {}
     faults: list[Fault] = []
+    files: dict[tuple[str, ...], bytes] = {}
     for reading in tables["screen"]:
         for key, task_key, task in _tasks(reading, sheet):
             wanted[key] = task_key
             if task_key in tasks:
                 continue
+            file = task_key[:2]
             try:
-                data = _bytes(task_key, key, folder=folder, where=where)
+                # one reading for all elements of a file, so that its digest is that of all
+                data = files[file] if file in files else _bytes(task_key, key, folder=folder, where=where)
             except InputError as error:
                 faults += error.faults
                 continue
+            files[file] = data
             tasks[task_key] = _Task(key, task_key[1], task | {"bytes": len(data)}, data)
     if not tasks:
         return Artwork(), faults
     answers, more = _ask(tasks, where)
-    return _artwork(tables["screen"], wanted, answers), faults + more
+    digests = {path: hashlib.sha256(data).hexdigest() for (_, path), data in files.items()}
+    return replace(_artwork(tables["screen"], wanted, answers), digests=digests), faults + more
 
 
 def _sheet(reading: TableReading) -> SheetSize:
@@ -108,7 +138,7 @@ def _tasks(reading: TableReading, sheet: SheetSize) -> list[tuple[str, tuple[str
         head = {
             "kind": "outlines",
             "element": area.id,
-            "sheet_height_mm": sheet.height_mm,
+            "sheet_mm": (sheet.width_mm, sheet.height_mm),
             "box_mm": sheet.box_mm,
             "label": area.svg,
         }
@@ -150,9 +180,11 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
     if not full.is_relative_to(base):
         raise refuse("the path leaves the preset's folder through a link")
     most = MOST_SVG_BYTES if outlines else MOST_PICTURE_BYTES
-    data = read_plain_file(
-        full, most_bytes=most, what="the drawing" if outlines else "the picture", where=where, key=key
-    )
+    what = "the drawing" if outlines else "the picture"
+    if _is_missing(full):
+        near = _nearest_file(base, path, _ENDINGS[task_key[0]])
+        raise refuse(f"{what} does not exist", shown(near) if near else "")
+    data = read_plain_file(full, most_bytes=most, what=what, where=where, key=key)
     if outlines and data.startswith(b"\x1f\x8b"):
         raise InputError(Fault(where, key, "the drawing is packed (svgz)", shown(text), "plain SVG: unpack it first"))
     if outlines and (
@@ -168,6 +200,48 @@ def _bytes(task_key: tuple[str, ...], key: str, *, folder: Path | None, where: s
             )
         )
     return data
+
+
+def _is_missing(path: Path) -> bool:
+    try:
+        path.stat()
+    except FileNotFoundError:
+        return True
+    except (OSError, ValueError):
+        return False  # it may be there: the reader will say what is wrong with it
+    return False
+
+
+def _nearest_file(base: Path, path: PurePosixPath, endings: Sequence[str]) -> str:
+    """The path of an existing file of that kind that looks most like the one asked for, or an empty text.
+
+    Folders are followed part by part, each as spelt or as it comes nearest.
+    """
+    here = PurePosixPath()
+    for at, part in enumerate(path.parts):
+        last = at == len(path.parts) - 1
+        try:
+            with os.scandir(base / here) as entries:
+                names = sorted(
+                    entry.name
+                    for entry in islice(entries, _MOST_LISTED)
+                    if not text_problem(entry.name)
+                    and (entry.is_file() and entry.name.lower().endswith(tuple(endings)) if last else entry.is_dir())
+                )
+        except OSError:
+            return ""
+        # endings are of one kind here, and would make every name look alike
+        known = {PurePosixPath(name).stem if last else name: name for name in reversed(names)}
+        like = PurePosixPath(part).stem if last else part
+        word = like if like in known else nearest(like, known)
+        if not word:
+            return ""
+        here /= known[word]
+    try:
+        inside = (base / here).resolve().is_relative_to(base)
+    except (OSError, RuntimeError):
+        return ""
+    return str(here) if inside else ""
 
 
 def _ask(tasks: Mapping[tuple[str, ...], _Task], where: str) -> tuple[dict[tuple[str, ...], _Answer], list[Fault]]:

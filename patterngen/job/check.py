@@ -40,7 +40,7 @@ Readings = Mapping[str, Sequence[TableReading]]
 
 def across(tables: Readings, *, where: str) -> list[Fault]:
     """Faults that need more than one value; faulty values take no part."""
-    checks = (_sheet, _gains, _ink_names, _names, _inks_used, _overprints, _rulings, _waivers)
+    checks = (_sheet, _gains, _edge_gains, _ink_names, _names, _inks_used, _overprints, _rulings, _waivers)
     return [fault for check in checks for fault in check(tables, where)]
 
 
@@ -132,6 +132,33 @@ def _gains(tables: Readings, where: str) -> Iterator[Fault]:
     for reading in (*tables["press"], *tables["screen"]):
         if reading.get("gain") is not None and reading.get("edge_gain") is not None:
             yield Fault(where, f"{reading.path}.edge_gain", "two gains at once", allowed="either gain or edge_gain")
+
+
+def _edge_gains(tables: Readings, where: str) -> Iterator[Fault]:
+    """Edges that grow by half the pitch close every shape, whatever its tone."""
+    pitches_mm: dict[str, tuple[float, str]] = {}  # by the table whose edge_gain counts: the finest of its screens
+    for reading in tables["screen"]:
+        ruling = reading.get("ruling")
+        if not isinstance(ruling, float):
+            continue
+        own = {reading.path for key in ("gain", "edge_gain") if key in reading.given}
+        table = next(iter(own), "press")
+        pitches_mm[table] = min(pitches_mm.get(table, (math.inf, "")), (1 / ruling, reading.path))
+    for reading in (*tables["press"], *tables["screen"]):
+        edge_mm = reading.get("edge_gain")
+        pitch_mm, screen = pitches_mm.get(reading.path, (math.inf, ""))
+        if edge_mm is None or edge_mm < pitch_mm / 2:
+            continue
+        half_um = 500 * pitch_mm
+        whole_um = math.ceil(half_um) - 1
+        yield Fault(
+            where,
+            f"{reading.path}.edge_gain",
+            f"edges that grow this much close every shape of {screen}",
+            f"{plain(1000 * edge_mm)} um",
+            allowed=f"less than half its pitch, {plain(round(half_um, 2))} um",
+            nearest=f'"{whole_um} um"' if whole_um > 0 else "",
+        )
 
 
 def _ink_names(tables: Readings, where: str) -> Iterator[Fault]:

@@ -19,6 +19,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from patterngen.units import plain
+
 if TYPE_CHECKING:
     from shapely.geometry.base import BaseGeometry
 
@@ -29,6 +31,8 @@ MOST_ELEMENTS = 50_000
 MOST_POINTS = 1_000_000
 CHORD_ERROR_MM = 1e-4
 _SMALLEST_MM2 = 1e-8
+_SAME_SIZE_MM = 0.5
+"""A page within this of the sheet is the sheet: sizes are often rounded to whole mm or points."""
 _MOST_WORK = 2_000_000_000
 _LARGEST = 1e7
 _MM_PER_PX = 25.4 / 96
@@ -80,26 +84,29 @@ def read(
     data: bytes,
     *,
     element: str | None,
-    sheet_height_mm: float,
+    sheet_mm: tuple[float, float],
     box_mm: tuple[float, float, float, float],
     label: str,
 ) -> Outlines:
     """The outlines of a drawing, or of the element with that id, cut to `box_mm`.
 
-    The page's top left corner lies on the sheet's; x right, y up from the lower left one.
+    The page's top left corner lies on that of the sheet, whose width and height are
+    `sheet_mm`; x right, y up from the lower left one.
     Raises `OutlineError`.
     """
     import shapely
 
     root = _parse(data)
     drawing = _Drawing(root, label)
-    page = _page_matrix(root)
+    page_mm = (_page_length(root, "width"), _page_length(root, "height"))
+    page = _page_matrix(root, page_mm)
+    drawing.remarks += _page_remarks(root, page_mm, sheet_mm, label)
     try:
         geometry = shapely.union_all(list(drawing.filled(page, element)))
     except RecursionError:
         raise OutlineError("uses and groups are nested too deep", allowed="plainer drawings") from None
     # turn y up; that turns the rings round too, which `orient` below sets right
-    flipped = shapely.transform(geometry, lambda xy: np.column_stack([xy[:, 0], sheet_height_mm - xy[:, 1]]))
+    flipped = shapely.transform(geometry, lambda xy: np.column_stack([xy[:, 0], sheet_mm[1] - xy[:, 1]]))
     if flipped.area < _SMALLEST_MM2:
         raise OutlineError("nothing in it has an area", allowed="closed outlines: paths or basic shapes")
     cut = shapely.intersection(flipped, shapely.box(*box_mm))
@@ -183,9 +190,33 @@ def _parse(data: bytes) -> ET.Element:
     return root
 
 
-def _page_matrix(root: ET.Element) -> FloatArray:
+def _page_remarks(
+    root: ET.Element, page_mm: tuple[float, float], sheet_mm: tuple[float, float], label: str
+) -> Iterator[str]:
+    """What is odd about the page: lengths whose size in mm is a convention, a size that is not the sheet's."""
+    units = {_page_unit(root, name) for name in ("width", "height")}
+    if units & {"", "px"}:
+        words = "have no unit" if units == {""} else "are in px" if units == {"px"} else "are in part in px"
+        yield (
+            f"{label}: its page's width and height {words}; px were read as 1/96 in, "
+            f"so that the page is {_size(page_mm)}"
+        )
+    elif root.get("viewBox") is None:
+        yield f"{label}: its page has no viewBox, so its numbers without a unit are px, which were read as 1/96 in"
+    if any(abs(page - sheet) > _SAME_SIZE_MM for page, sheet in zip(page_mm, sheet_mm, strict=True)):
+        yield (
+            f"{label}: its page is {_size(page_mm)}, but the sheet {_size(sheet_mm)}; "
+            "the page's top left corner was put on the sheet's"
+        )
+
+
+def _size(size_mm: tuple[float, float]) -> str:
+    wide, high = (plain(round(length, 2)) for length in size_mm)
+    return f"{wide} x {high} mm"
+
+
+def _page_matrix(root: ET.Element, page_mm: tuple[float, float]) -> FloatArray:
     """User units of the page to mm, y down, by size, viewBox and preserveAspectRatio."""
-    sizes = [_page_length(root.get(name), name) for name in ("width", "height")]
     box = root.get("viewBox")
     if box is None:
         return np.array([[_MM_PER_PX, 0.0, 0.0], [0.0, _MM_PER_PX, 0.0], [0.0, 0.0, 1.0]])
@@ -197,7 +228,7 @@ def _page_matrix(root: ET.Element) -> FloatArray:
             allowed='four numbers, the last two above zero, like "0 0 90 60"',
         )
     x, y, wide, high = numbers
-    sx, sy = sizes[0] / wide, sizes[1] / high
+    sx, sy = page_mm[0] / wide, page_mm[1] / high
     words = root.get("preserveAspectRatio", "xMidYMid meet").split()
     align = words[0] if words else "xMidYMid"
     dx = dy = 0.0
@@ -211,17 +242,26 @@ def _page_matrix(root: ET.Element) -> FloatArray:
             )
         one = max(sx, sy) if words[1:] == ["slice"] else min(sx, sy)
         part = {"Min": 0.0, "Mid": 0.5, "Max": 1.0}
-        dx = part[match[1]] * (sizes[0] - one * wide)
-        dy = part[match[2]] * (sizes[1] - one * high)
+        dx = part[match[1]] * (page_mm[0] - one * wide)
+        dy = part[match[2]] * (page_mm[1] - one * high)
         sx = sy = one
     return np.array([[sx, 0.0, dx - sx * x], [0.0, sy, dy - sy * y], [0.0, 0.0, 1.0]])
 
 
-def _page_length(text: str | None, name: str) -> float:
+_PAGE_LENGTH = re.compile(rf"\s*({_NUMBER})\s*([a-zA-Z%]*)\s*", re.ASCII)
+
+
+def _page_unit(root: ET.Element, name: str) -> str:
+    match = _PAGE_LENGTH.fullmatch(root.get(name, ""))
+    return match[2].lower() if match else ""
+
+
+def _page_length(root: ET.Element, name: str) -> float:
+    text = root.get(name)
     allowed = f'{name} in mm, cm, in, pt or px on the <svg> element, like {name}="90mm"'
     if text is None:
         raise OutlineError(f"its page has no {name}", allowed=allowed)
-    match = re.fullmatch(rf"\s*({_NUMBER})\s*([a-zA-Z%]*)\s*", text, re.ASCII)
+    match = _PAGE_LENGTH.fullmatch(text)
     factor = _UNITS_MM.get(match[2].lower()) if match else None
     if match is None or factor is None:
         raise OutlineError(f"its page's {name} is no real size", value=_clip(text), allowed=allowed)

@@ -36,6 +36,8 @@ _OTHERS = (
 )
 _ALLOWED = "PNG, TIFF or JPEG; 8 or 16 bit; grey, palette or RGB"
 _ROWS_AT_ONCE = 256
+_SAME_LEVEL = 2
+"""Channels this near (of 255) are one grey: a decoder's rounding may part them so far."""
 
 
 class PictureError(ValueError):
@@ -82,7 +84,13 @@ def read(data: bytes, *, label: str) -> Picture:
                 remarks.append(f"{label}: only the first page is used")
             image.load()
             inverted = _stored_inverted(image)
-            values = _grey(image, inverted)
+            values, coloured = _grey(image, inverted)
+            if coloured:
+                red, green, blue = _LUMINANCE
+                remarks.append(
+                    f"{label}: the picture is in colour and was read as grey, by its luminance "
+                    f"({red} red + {green} green + {blue} blue)"
+                )
             turned = _upright(image, values, remarks, label)
         except PictureError:
             raise
@@ -135,10 +143,11 @@ def _white(values: NDArray[Any]) -> int:
     return int(np.iinfo(values.dtype).max)
 
 
-def _grey(image: Image, inverted: bool) -> NDArray[Any]:
+def _grey(image: Image, inverted: bool) -> tuple[NDArray[Any], bool]:
+    """Grey samples, and whether they came from real colours."""
     mode = image.mode
     if mode.startswith("I;16"):
-        return _sixteen_bits(image, inverted)
+        return _sixteen_bits(image, inverted), False
     if mode in ("CMYK", "LAB", "YCbCr", "HSV", "I", "F"):
         words = {"CMYK": "CMYK", "LAB": "CIELAB", "I": "32 bit whole numbers", "F": "floating point numbers"}
         raise PictureError(
@@ -147,9 +156,9 @@ def _grey(image: Image, inverted: bool) -> NDArray[Any]:
         )
     clear = "transparency" in image.info or mode in ("LA", "RGBA", "PA", "La", "RGBa")
     if mode == "1":
-        return np.asarray(image.convert("L"), dtype=np.uint8)
+        return np.asarray(image.convert("L"), dtype=np.uint8), False
     if mode == "L" and not clear:
-        return np.asarray(image, dtype=np.uint8)
+        return np.asarray(image, dtype=np.uint8), False
     if mode not in ("L", "LA", "P", "PA", "RGB", "RGBA", "La", "RGBa", "RGBX"):
         raise PictureError(f"has a pixel format that is not known here ({mode})")
     return _colour(image.convert("RGBA" if clear else "RGB"), clear)
@@ -165,18 +174,25 @@ def _sixteen_bits(image: Image, inverted: bool) -> NDArray[Any]:
     return values
 
 
-def _colour(image: Image, clear: bool) -> NDArray[Any]:
-    """Luminance in 16 bits, so that no grey of the sum is lost; in strips, so that memory stays small."""
+def _colour(image: Image, clear: bool) -> tuple[NDArray[Any], bool]:
+    """Luminance in 16 bits, so that no grey of the sum is lost, and whether any pixel that shows is coloured.
+
+    In strips, so that memory stays small.
+    """
     wide, high = image.size
     out = np.empty((high, wide), dtype=np.uint16)
+    coloured = False
     for top in range(0, high, _ROWS_AT_ONCE):
         strip = np.asarray(image.crop((0, top, wide, min(top + _ROWS_AT_ONCE, high))), dtype=np.float32)
         grey: NDArray[Any] = strip[..., :3] @ np.array(_LUMINANCE, dtype=np.float32)
+        if not coloured:
+            apart = strip[..., :3].max(axis=-1) - strip[..., :3].min(axis=-1)
+            coloured = bool(np.any((apart > _SAME_LEVEL) & (strip[..., 3] > 0 if clear else True)))
         if clear:
             cover = strip[..., 3] / 255
             grey = grey * cover + 255 * (1 - cover)
         out[top : top + len(strip)] = np.rint(np.clip(grey, 0, 255) * 257)
-    return out
+    return out, coloured
 
 
 def _upright(image: Image, values: NDArray[Any], remarks: list[str], label: str) -> NDArray[Any]:

@@ -355,6 +355,7 @@ def _job(source: _Source, readings: _Readings, art: Any, set_paths: set[str]) ->
         waivers=tuple(Waiver(r["rule"], r["reason"]) for r in tables["waive"]),
         origin=origin,
         remarks=tuple(remarks),
+        artwork=art.digests,
     )
     if faults := check.too_much(job, where=source.where):
         raise InputError(faults)
@@ -426,6 +427,10 @@ def _screen(reading: TableReading, press: Press, sheet: SheetSize, art: Any, rem
         else ToneField(constant=reading["tone"], label=check.percent(reading["tone"]))
     )
     if tone.constant is None:
+        from patterngen.job.artwork import free_sides
+
+        if free := free_sides(tone, area):
+            remarks.append(f"{reading.path}.tone: {free}")
         area = area.within(tone.box_mm)
     return ScreenRequest(
         name=reading["name"],

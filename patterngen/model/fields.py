@@ -31,6 +31,7 @@ from patterngen.units import (
 
 CHOOSE = "choose"
 """The word that leaves a value to the search."""
+_FOR_THE_SEARCH = "for the search command `angles`, which this version does not have yet"
 
 
 def refusal(problem: str, *, allowed: str = "", nearest: str = "") -> PydanticCustomError:
@@ -97,7 +98,7 @@ class QuantityField(_Field):
         }
         if not self.choose:
             return text
-        return {"anyOf": [text, {"const": CHOOSE, "description": "left to the command `angles`"}]}
+        return {"anyOf": [text, {"const": CHOOSE, "description": _FOR_THE_SEARCH}]}
 
     def range_words(self) -> str:
         """The range in words, in the unit of the quantity's example."""
@@ -245,31 +246,43 @@ class NameField(_Field):
 
 @dataclass(frozen=True, eq=False)
 class ChoiceField(_Field):
-    """One of a few words, which `options` lists when asked (so that a registry may grow)."""
+    """One of a few words, which `options` lists when asked (so that a registry may grow).
+
+    With `any_case`, lower-case options may be written in capitals too.
+    """
 
     what: str
     options: Callable[[], tuple[str, ...]]
+    any_case: bool = False
 
     def read(self, value: object) -> str:
-        """The word itself."""
+        """The word as `options` has it."""
         from difflib import get_close_matches
 
         options = self.options()
         allowed = ", ".join(options)
         if not isinstance(value, str):
             raise refusal(f"not the name of {self.what}", allowed=allowed)
-        if value not in options:
+        word = value.lower() if self.any_case else value
+        if word not in options:
             near = get_close_matches(value.strip().lower().replace("_", "-"), options, n=1, cutoff=0.4)
             raise refusal(
                 f"no such {self.what.split(' ', 1)[1]}",
                 allowed=allowed,
                 nearest=f'"{near[0]}"' if near else "",
             )
-        return value
+        return word
 
     def schema(self) -> dict[str, Any]:
-        """An enumeration."""
-        return {"type": "string", "enum": list(self.options()), "description": self.what}
+        """An enumeration, and the same words in any case where that is open."""
+        options = self.options()
+        words = {"type": "string", "enum": list(options), "description": self.what}
+        if not self.any_case:
+            return words
+        letters = ("".join(f"[{c}{c.upper()}]" if c.isalpha() else re.escape(c) for c in word) for word in options)
+        # the list comes first, as it is what editors complete from
+        spelt = {"type": "string", "pattern": f"^({'|'.join(letters)})$", "description": f"{self.what}, in any case"}
+        return {"anyOf": [words, spelt], "description": f"{self.what}; capitals and small letters count the same"}
 
 
 _LAB_BOUNDS = ((0.0, 100.0), (-200.0, 200.0), (-200.0, 200.0))

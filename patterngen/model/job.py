@@ -154,6 +154,8 @@ class Job:
     derived: tuple[Derived, ...] = ()
     remarks: tuple[str, ...] = ()
     """What the gates normalised or found odd, one sentence each; they become warnings."""
+    artwork: Mapping[str, str] = field(default_factory=dict)
+    """SHA-256 (hex) of the bytes that were used of every picture and outline, by its path as in the preset."""
 
     def ink(self, name: str) -> Ink:
         """The ink of that name."""

@@ -34,11 +34,11 @@ _BATCH = 200_000
 
 
 class Params(BaseModel):
-    """`shape`: a spot function by its standard name in lower case."""
+    """`shape`: a spot function by its standard name, read in lower case."""
 
     model_config = ConfigDict(extra="forbid")
 
-    shape: Annotated[str, ChoiceField("a spot function", lambda: SHAPES)] | None = None
+    shape: Annotated[str, ChoiceField("a spot function", lambda: SHAPES, any_case=True)] | None = None
 
 
 class DotScreen(InkScreen):

@@ -6,6 +6,7 @@ The corpus is kept as generators; whatever once broke the reader is added and st
 from __future__ import annotations
 
 import gzip
+import hashlib
 import io
 import os
 import struct
@@ -487,3 +488,114 @@ def test_a_reader_that_dies_is_named(tmp_path: Path, monkeypatch: pytest.MonkeyP
     monkeypatch.setattr(artwork, "WALL_SECONDS", 0.01)
     with pytest.raises(InputError, match="took longer than"):
         load(with_area(tmp_path, svg(PANEL)()))
+
+
+@pytest.mark.parametrize(
+    ("shape", "free"),
+    [
+        ((40, 60), ""),
+        ((40, 40), "leaves 10 mm free at the left and right of its area (60 x 40 mm)"),
+        ((20, 60), "leaves 10 mm free at the top and bottom of its area (60 x 40 mm)"),
+        ((400, 590), ""),  # 0.5 mm, but less than 1 %
+        ((400, 585), "leaves 0.75 mm free at the left and right"),
+    ],
+)
+def test_free_sides_are_told(shape: tuple[int, int], free: str, tmp_path: Path) -> None:
+    """second way: what stays free beside the picture, by hand from its proportions on a sheet of 60 x 40 mm."""
+    job = load(with_picture(tmp_path, png(np.full(shape, 100, np.uint8))))
+    assert [r.startswith("screen.clover.tone: the picture") and free in r for r in job.remarks] == [True] * bool(free)
+
+
+def test_free_sides_of_a_small_area(tmp_path: Path) -> None:
+    """second way: 6 % of a 3 mm wide area is less than 0.2 mm and not told; 8 % is."""
+    for columns, told in ((88, False), (84, True)):
+        preset = with_picture(tmp_path, png(np.full((100, columns), 100, np.uint8)))
+        (tmp_path / "panel.svg").write_bytes(svg('<rect x="5" y="5" width="3" height="3"/>')())
+        text = preset.read_text(encoding="utf-8")
+        preset.write_text(f'{text}area = {{ svg = "panel.svg" }}\n', encoding="utf-8")
+        assert bool(load(preset).remarks) == told
+
+
+COLOURS = np.stack([np.full((4, 6), v, np.uint8) for v in (200, 90, 40)], axis=2)
+GREYS = np.repeat(np.arange(24, dtype=np.uint8).reshape(4, 6, 1) * 9, 3, axis=2)
+
+
+@pytest.mark.parametrize(
+    ("make", "told"),
+    [
+        (lambda: png(COLOURS), True),
+        (lambda: _saved(Image.fromarray(COLOURS), "JPEG"), True),
+        (lambda: _saved(Image.fromarray(COLOURS).quantize(4), "PNG"), True),
+        (lambda: png(GREYS), False),
+        (lambda: _saved(Image.fromarray(GREYS), "JPEG"), False),
+        (lambda: png(GREYS + np.array([0, 2, 0], np.uint8)), False),
+        (lambda: png(GREYS + np.array([0, 3, 0], np.uint8)), True),
+        (lambda: png(GREYS[..., 0]), False),
+        # colour that is wholly transparent shows nowhere
+        (lambda: png(np.dstack([COLOURS, np.zeros((4, 6), np.uint8)])), False),
+        (lambda: png(np.dstack([COLOURS, np.full((4, 6), 9, np.uint8)])), True),
+    ],
+)
+def test_colour_read_as_grey_is_told(make: Callable[[], bytes], told: bool, tmp_path: Path) -> None:
+    """invariant: told only when the channels of what shows really differ."""
+    job = load(with_picture(tmp_path, make()))
+    words = "cow.png: the picture is in colour and was read as grey, by its luminance (0.2126 red"
+    assert any(remark.startswith(words) for remark in job.remarks) == told
+
+
+@pytest.mark.parametrize(
+    ("asked", "nearest"),
+    [
+        ("art/pannel.svg", '"art/panel.svg"'),
+        ("art/Panel.SVG", '"art/panel.svg"'),
+        ("Art/panel.svg", '"art/panel.svg"'),
+        ("art/panel.toml", '"art/panel.svg"'),
+        ("art/panel-2", '"art/panel.svg"'),
+        ("art/zzz.svg", ""),
+        ("nowhere/panel.svg", ""),
+        ("art/outsid.svg", ""),  # a link out of the folder is no help
+    ],
+)
+def test_missing_files_name_the_nearest(asked: str, nearest: str, tmp_path: Path) -> None:
+    """invariant: what is proposed is there, is of the kind, and lies in the preset's folder."""
+    folder = tmp_path / "job"
+    (folder / "art").mkdir(parents=True)
+    (tmp_path / "far.svg").write_bytes(b"")
+    (folder / "art" / "outside.svg").symlink_to(tmp_path / "far.svg")
+    for name in ("panel.svg", "panel.png", "panels.txt"):
+        (folder / "art" / name).write_bytes(svg(PANEL)())
+    preset = folder / "lid.toml"
+    preset.write_text(PRESET + f'tone = "40 %"\narea = {{ svg = "{asked}" }}\n', encoding="utf-8")
+    with pytest.raises(InputError) as caught:
+        load(preset)
+    (fault,) = caught.value.faults
+    assert fault.problem == "the drawing does not exist"
+    assert (fault.value, fault.nearest) == (f'"{asked}"', nearest)
+
+
+def test_missing_pictures_name_the_nearest(tmp_path: Path) -> None:
+    """invariant: for a picture, a picture is proposed."""
+    (tmp_path / "cows.svg").write_bytes(svg(PANEL)())
+    preset = with_picture(tmp_path, png(RAMP), name="cow-brown.png")
+    preset.write_text(PRESET + 'tone = { image = "cow-brwn.jpg" }\n', encoding="utf-8")
+    assert 'nearest: "cow-brown.png"' in refusal(preset, "screen.clover.tone.image")
+
+
+def test_digests_of_what_was_used(tmp_path: Path) -> None:
+    """second way: the digest of each file's bytes, by the path that the preset gives; once for a file used twice."""
+    drawing = svg('<rect id="a" x="5" y="5" width="20" height="20"/><rect id="b" x="30" y="5" width="20" height="20"/>')
+    (tmp_path / "art").mkdir()
+    (tmp_path / "art" / "panel.svg").write_bytes(drawing())
+    (tmp_path / "cow.png").write_bytes(png(RAMP))
+    preset = tmp_path / "lid.toml"
+    second = PRESET[PRESET.index("[[screen]]") :].replace('name = "clover"', 'name = "second"')
+    preset.write_text(
+        PRESET
+        + 'tone = "40 %"\narea = { svg = "art/panel.svg", id = "a" }\n'
+        + second + 'tone = { image = "cow.png" }\narea = { svg = "art/panel.svg", id = "b" }\n',
+        encoding="utf-8",
+    )  # fmt: skip
+    assert load(preset).artwork == {
+        "art/panel.svg": hashlib.sha256(drawing()).hexdigest(),
+        "cow.png": hashlib.sha256(png(RAMP)).hexdigest(),
+    }

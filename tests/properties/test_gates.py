@@ -162,7 +162,7 @@ def test_any_path_data(text: str) -> None:
     head = '<svg xmlns="http://www.w3.org/2000/svg" width="90mm" height="60mm" viewBox="0 0 90 60">'
     svg = f'{head}<path d="{text}"/></svg>'
     try:
-        found = read(svg.encode(), element=None, sheet_height_mm=60.0, box_mm=(0, 0, 90, 60), label="x")
+        found = read(svg.encode(), element=None, sheet_mm=(90.0, 60.0), box_mm=(0, 0, 90, 60), label="x")
     except OutlineError:
         return
     for ring in found.rings:

@@ -20,7 +20,7 @@ BOX = (-3.0, -3.0, 93.0, 63.0)
 
 
 def outlines(body: str, *, page: str = PAGE, element: str | None = None, box: Any = BOX) -> Outlines:
-    return read(page.format(body).encode(), element=element, sheet_height_mm=60.0, box_mm=box, label="art/lid.svg")
+    return read(page.format(body).encode(), element=element, sheet_mm=(90.0, 60.0), box_mm=box, label="art/lid.svg")
 
 
 def geometry(body: str, **more: Any) -> shapely.Geometry:
@@ -242,3 +242,30 @@ def test_duplicate_rings() -> None:
     assert geometry(
         f'<path fill-rule="evenodd" d="{twice}"/><rect x="40" width="1" height="1"/>'
     ).area == pytest.approx(1)
+
+
+@pytest.mark.parametrize(
+    ("size", "remarks"),
+    [
+        ('width="90mm" height="60mm" viewBox="0 0 90 60"', ()),
+        ('width="255pt" height="170pt" viewBox="0 0 90 60"', ()),  # 89.96 x 59.97 mm
+        ('width="90.4mm" height="60mm" viewBox="0 0 90 60"', ()),
+        ('width="96mm" height="66mm" viewBox="-3 -3 96 66"', ("its page is 96 x 66 mm, but the sheet 90 x 60 mm",)),
+        ('width="90mm" height="60.6mm" viewBox="0 0 90 60"', ("its page is 90 x 60.6 mm",)),
+        (
+            'width="90" height="60" viewBox="0 0 90 60"',
+            ("have no unit; px were read as 1/96 in, so that the page is 23.81 x 15.88 mm", "but the sheet 90 x 60 mm"),
+        ),
+        ('width="340.157px" height="226.772px"', ("width and height are in px; px were read as 1/96 in",)),
+        ('width="340.157px" height="60mm" viewBox="0 0 90 60"', ("in part in px",)),
+        ('width="90mm" height="60mm"', ("no viewBox",)),
+    ],
+)
+def test_odd_pages_are_told(size: str, remarks: tuple[str, ...]) -> None:
+    """second way: sizes worked out by hand at 25.4 mm = 96 px = 72 pt; 0.5 mm apart is the same size."""
+    svg = f'<svg xmlns="http://www.w3.org/2000/svg" {size}>{{}}</svg>'
+    found = outlines('<rect x="10" y="5" width="20" height="8"/>', page=svg).remarks
+    assert len(found) == len(remarks), found
+    for words, remark in zip(remarks, found, strict=True):
+        assert words in remark
+        assert remark.startswith("art/lid.svg: its page")

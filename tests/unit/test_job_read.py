@@ -303,3 +303,60 @@ def test_later_tables() -> None:
     """invariant: tables of later versions are known by name, and that is said."""
     (fault,) = faults(preset(key=[{"name": "seal"}]))
     assert fault.problem == "this version does not make keys yet"
+
+
+@pytest.mark.parametrize(
+    ("spelt", "name"),
+    [
+        ("SimpleDot", "simpledot"),
+        ("Round", "round"),
+        ("InvertedDoubleDot", "inverteddoubledot"),
+        ("LineX", "linex"),
+        ("round", "round"),
+    ],
+)
+def test_spot_functions_by_the_standards_spelling(spelt: str, name: str) -> None:
+    """published: ISO 32000-1 (2008), Table 130: its names mix capitals in; the job holds them in lower case."""
+    job = load(preset(screen__0__shape=spelt))
+    assert job.screens[0].shape == name
+    assert load(PRESET, (f"screen.clover.shape={spelt}",)).screens[0].shape == name
+
+
+def test_spot_function_misspelt() -> None:
+    """invariant: case is forgiven, letters are not; the nearest name is told."""
+    (fault,) = faults(preset(screen__0__shape="SimpelDot"))
+    assert (fault.key, fault.nearest) == ("screen.clover.shape", '"simpledot"')
+    (fault,) = faults(preset(screen__0__kind="Dots"))
+    assert fault.nearest == '"dots"'
+
+
+@pytest.mark.parametrize(
+    ("changes", "key", "half_um", "nearest"),
+    [
+        # 150 lpi: a pitch of 25.4 mm / 150 = 169.33 um
+        ({"screen__0__edge_gain": "1 mm"}, "screen.clover.edge_gain", "84.67", '"84 um"'),
+        ({"screen__0__edge_gain": "84.667 um"}, "screen.clover.edge_gain", "84.67", '"84 um"'),
+        # lines of 60 /cm: 166.67 um, the finer of the two
+        ({"press__edge_gain": "84 um"}, "press.edge_gain", "83.33", '"83 um"'),
+        ({"press__edge_gain": "84 um", "screen__1__ruling": "50 /cm", "screen__0__ruling": "50.8 /cm",
+          "screen__0__gain": "16 %"}, "", "", ""),
+        ({"press__edge_gain": "200 um", "screen__1__ruling": "50 /cm", "screen__0__edge_gain": "5 um"},
+         "press.edge_gain", "100", '"99 um"'),
+        ({"screen__0__edge_gain": "84 um"}, "", "", ""),
+        ({"screen__0__ruling": None, "screen__0__edge_gain": "84.667 um"}, "", "", ""),
+    ],
+)  # fmt: skip
+def test_edges_that_close_everything(changes: dict[str, Any], key: str, half_um: str, nearest: str) -> None:
+    """second way: half the pitch by hand from the ruling; a screen's own gain counts, else the press's."""
+    if not key:
+        load(preset(**changes))
+        return
+    (fault,) = faults(preset(**changes))
+    assert (fault.key, fault.nearest) == (key, nearest)
+    assert f"less than half its pitch, {half_um} um" in fault.allowed
+    assert fault.value.endswith(" um")
+
+
+def test_a_job_without_artwork_lists_none() -> None:
+    """invariant: no files, no digests."""
+    assert load(PRESET).artwork == {}

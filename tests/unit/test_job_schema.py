@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import re
 import shutil
 import subprocess
 import sys
@@ -86,6 +87,7 @@ def test_editors_pass_the_shipped_presets(tmp_path: Path) -> None:
         ('kind = "dots"', 'kind = "dost"'),
         ("patterngen = 1", "patterngen = 2"),
         ("[sheet]", "[shet]"),
+        ('shape = "simpledot"', 'shape = "SimpelDot"'),
         ('name = "cyan"', 'name = "cyan"\nanlge = "15 deg"'),
         ("lab = [95, 0, -2]", "lab = [95, 0]"),
     ],
@@ -98,3 +100,32 @@ def test_editors_refuse(old: str, new: str, tmp_path: Path) -> None:
     path = tmp_path / "carton.toml"
     path.write_text(text.replace(old, new, 1), encoding="utf-8")
     assert check(path).returncode == 1
+
+
+def test_spot_functions_in_any_case() -> None:
+    """invariant: editors complete the lower-case names and let the standard's own spelling stand."""
+    words, spelt = schema()["$defs"]["DotsScreen"]["properties"]["shape"]["anyOf"]
+    assert "inverteddoubledot" in words["enum"]
+    for name in ("InvertedDoubleDot", "SimpleDot", "Round", "ROUND", *words["enum"]):
+        assert re.search(spelt["pattern"], name)
+    for name in ("SimpelDot", "Round ", "dot", "simpledots"):
+        assert not re.search(spelt["pattern"], name)
+
+
+def test_choose_is_told_to_be_of_a_later_version() -> None:
+    """invariant: an editor shows that the word is for a command that is not there yet."""
+    angle = schema()["$defs"]["DotsScreen"]["properties"]["angle"]["anyOf"]
+    (word,) = [branch for branch in angle if branch.get("const") == "choose"]
+    assert "search command" in word["description"]
+    assert "does not have yet" in word["description"]
+
+
+@taplo
+def test_editors_pass_the_standards_spelling(tmp_path: Path) -> None:
+    """second way: the outside checker passes a spot function as the standard spells it."""
+    (tmp_path / "preset.schema.json").write_text(json.dumps(schema()), encoding="utf-8")
+    text = next(p for p in presets() if p.name == "carton").path.read_text(encoding="utf-8")
+    path = tmp_path / "carton.toml"
+    path.write_text(text.replace('shape = "simpledot"', 'shape = "SimpleDot"', 1), encoding="utf-8")
+    done = check(path)
+    assert done.returncode == 0, done.stderr
