@@ -59,7 +59,7 @@ class _Field:
 class QuantityField(_Field):
     """A number with its unit, between `low` and `high` (inner unit; `above` leaves the low end out).
 
-    `choose` also lets the word "choose" through.
+    `choose` also lets the word "choose" through, which messages do not offer: nothing can be built from it.
     """
 
     quantity: Quantity
@@ -75,12 +75,12 @@ class QuantityField(_Field):
         try:
             number = parse(value, self.quantity)
         except QuantityError as error:
-            raise refusal(error.problem, allowed=self._with_choose(error.allowed), nearest=error.nearest) from None
+            raise refusal(error.problem, allowed=error.allowed, nearest=error.nearest) from None
         if not (self.low <= number <= self.high) or (self.above and number == self.low):
             unit = str(value).strip(" \t").lstrip("+-.0123456789eE").strip()
             raise refusal(
                 "out of range",
-                allowed=self._with_choose(self.range_words()),
+                allowed=self.range_words(),
                 nearest=self._bound(number, unit),
             )
         return number
@@ -110,9 +110,6 @@ class QuantityField(_Field):
         if math.isinf(self.low):
             return f"at most {high}"
         return f"{'more than' if self.above else 'from'} {low} {'up to' if self.above else 'to'} {high}"
-
-    def _with_choose(self, allowed: str) -> str:
-        return f'{allowed}; or "{CHOOSE}"' if self.choose else allowed
 
     def _outer(self, number: float) -> str:
         return f"{plain(number / self.quantity.units[self.quantity.unit])} {self.quantity.unit}"

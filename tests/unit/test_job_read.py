@@ -360,3 +360,11 @@ def test_edges_that_close_everything(changes: dict[str, Any], key: str, half_um:
 def test_a_job_without_artwork_lists_none() -> None:
     """invariant: no files, no digests."""
     assert load(PRESET).artwork == {}
+
+
+def test_choose_is_not_offered() -> None:
+    """invariant: a message offers only what can be built; "choose" is read, but belongs to the search."""
+    for ruling in ("150", "0 lpi"):
+        (fault,) = faults(preset(screen__0__ruling=ruling))
+        assert fault.allowed
+        assert "choose" not in fault.allowed
