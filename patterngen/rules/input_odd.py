@@ -25,7 +25,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     """One warning for each remark."""
     remarks = evidence.design.job.remarks
     for remark in remarks:
-        yield Measurement(None, None, "", "the preset", remark, source("own-rule"), worst="warn")
+        sentence = f"{remark.rstrip('.')}."
+        yield Measurement(None, None, "", "the preset", sentence, source("own-rule"), worst="warn")
     if not remarks:
         yield Measurement(
             None,

@@ -554,8 +554,8 @@ def _edges_at(shape: Shape, levels: FloatArray, sides: tuple[float, float]) -> F
     walk = _walk(shape, levels)
     steps = np.hypot(walk.da * sides[0], walk.db * sides[1]).sum(axis=1)
     # a quadrant's half cells are sides / 2, and there are four quadrants
-    lengths: FloatArray = 2.0 * np.bincount(walk.of[~walk.edge], steps[~walk.edge], minlength=len(levels))
-    return lengths
+    lengths = np.bincount(walk.of[~walk.edge], steps[~walk.edge], minlength=len(levels))
+    return np.asarray(2.0 * lengths, dtype=float)
 
 
 @dataclass(frozen=True)

@@ -1,4 +1,4 @@
-"""second way: figures of the Mannos & Sakrison response that circulate in public code; at second hand, not counted as published.
+"""second way: figures of the Mannos & Sakrison response that circulate in public code, not counted as published.
 
 Source: mannos-sakrison-1974, at second hand.
 """

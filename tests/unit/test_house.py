@@ -37,7 +37,7 @@ ONLY_IN = {
     "svgelements": {"job"},
     "defusedxml": {"job"},
     "PIL": {"job"},
-    "shapely": {"screens", "model", "job"},
+    "shapely": {"screens", "beats", "model", "job"},
 }
 
 

@@ -183,3 +183,28 @@ def test_derived_values_have_their_origin_and_reason() -> None:
     assert {item.value for item in derived.derived} == {"screen.cyan.angle", "screen.black.angle"}
     assert all(item.because for item in derived.derived)
     assert derived.origin["screen.cyan.angle"] == "rule usual-angles"
+
+
+TRIAL_TONES = ((40, 40, 40, 25), (25, 25, 25, 10), (50, 50, 30, 30))
+
+
+@pytest.mark.parametrize("lpi", [133, 150, 175])
+@pytest.mark.parametrize("tones", TRIAL_TONES)
+def test_the_calibration_on_practice(tones: tuple[int, int, int, int], lpi: int) -> None:
+    """common practice, no source: what the trade accepts and rejects, on three sets of tones and three rulings.
+
+    The usual set passes (it may warn); one drawing ink 1, 2 or 5 degrees off and yellow at 7.5
+    degrees fail; two drawing inks 15 degrees apart fail at mid and heavy tones.
+    """
+    inks = dict(zip(LABS, tones, strict=True))
+    ruled = [f'screen.{ink.lower()}.ruling="{lpi} lpi"' for ink in inks]
+
+    def status(*overrides: str) -> str:
+        return str(verdict_of(inks, *ruled, *overrides).status)
+
+    assert status() != "fail"
+    for off in (1, 2, 5):
+        assert status(f'screen.black.angle="{45 + off} deg"') == "fail", off
+    assert status('screen.yellow.angle="7.5 deg"') == "fail"
+    if tones != TRIAL_TONES[1]:
+        assert status('screen.black.angle="30 deg"') == "fail"
