@@ -175,9 +175,10 @@ def explicit_svg(batches: Iterable[Batch], *, side_mm: float = SIDE_MM) -> bytes
         for points, curved in shape:
             p = points * np.array([1, -1]) + np.array([0, side_mm])
             text.append(f"M{_spelled(p[0])}{'C' if curved else 'L'}{_spelled(p[1:])}Z")
-        paths.append(f'<path d="{"".join(text)}"/>')
+        paths.append("".join(text))
     size = f'width="{side_mm:.7f}mm" height="{side_mm:.7f}mm" viewBox="0 0 {side_mm:.7f} {side_mm:.7f}"'
-    return f'<svg xmlns="http://www.w3.org/2000/svg" {size}>{"".join(paths)}</svg>'.encode()
+    # one fill: between elements a reader counts an edge that both share twice
+    return f'<svg xmlns="http://www.w3.org/2000/svg" {size}><path d="{"".join(paths)}"/></svg>'.encode()
 
 
 def _spelled(values: np.ndarray) -> str:

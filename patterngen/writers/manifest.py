@@ -41,7 +41,7 @@ def dumps(job: Job, files: Mapping[str, Written], *, verdict: str | None = None)
             "job": job.name,
             "verdict": verdict,
             "preset": {"sha256": hashlib.sha256(job.text.encode()).hexdigest(), "text": job.text},
-            "artwork": plain(dict(sorted(getattr(job, "artwork", {}).items()))),
+            "artwork": plain(dict(sorted(job.artwork.items()))),
             "seeds": plain(seeds),
             "files": {name: {"sha256": files[name].sha256, "bytes": files[name].size} for name in sorted(files)},
         }

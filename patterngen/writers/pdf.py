@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import io
 import zlib
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from decimal import Decimal
 
 import numpy as np
@@ -28,6 +28,7 @@ from patterngen.writers._curves import chords, content
 from patterngen.writers._integers import whole
 from patterngen.writers._number import integers, lookup, number, numbers, rows
 from patterngen.writers._page import MARK_WIDTH_MM, Page, page_of
+from patterngen.writers._progress import Count
 
 POINTS_PER_MM = 72 / 25.4
 BLOCK = 64
@@ -45,8 +46,8 @@ _CELL_DIGITS = 6
 _D50 = (0.9642, 1.0, 0.8249)
 
 
-def write(design: Design) -> bytes:
-    """The base sheet of a design as one PDF page.
+def write(design: Design, *, progress: Callable[[str], None] | None = None) -> bytes:
+    """The base sheet of a design as one PDF page; `progress` is told how far it is.
 
     The same design gives the same bytes.  Each ink is `/Separation` with a Lab alternate
     (paper to solid, as measured), painted at full tint with overprint on.
@@ -55,7 +56,7 @@ def write(design: Design) -> bytes:
     page = page_of(job.sheet)
     with pikepdf.open(io.BytesIO(_envelope(job, page))) as pdf:
         marks = _clean(pdf)
-        sheet = _SheetWriter(pdf, page, job.paper_lab)
+        sheet = _SheetWriter(pdf, page, job.paper_lab, progress)
         for layer in design.base.layers:
             sheet.draw(layer)
         sheet.close(marks)
@@ -131,8 +132,10 @@ def _stream(pdf: pikepdf.Pdf, text: bytes) -> pikepdf.Stream:
 class _SheetWriter:
     """Draws the layers of one page: content in self-contained streams, repeated shapes as forms."""
 
-    def __init__(self, pdf: pikepdf.Pdf, page: Page, paper_lab: Lab) -> None:
-        self.pdf, self.page, self.paper_lab = pdf, page, paper_lab
+    def __init__(
+        self, pdf: pikepdf.Pdf, page: Page, paper_lab: Lab, progress: Callable[[str], None] | None = None
+    ) -> None:
+        self.pdf, self.page, self.paper_lab, self.progress = pdf, page, paper_lab, progress
         self.streams: list[pikepdf.Stream] = []
         self.groups: list[pikepdf.Object] = []
         self.forms: dict[tuple[bytes, bytes, int], int] = {}
@@ -153,8 +156,9 @@ class _SheetWriter:
             _separation(layer.ink.name, solid=layer.ink.lab, paper=self.paper_lab)
         )
         head = b"/OC /Layer%d BDC\nq\n/Over gs /Ink%d cs 1 scn\n" % (k, k)
+        counted = Count("base.pdf", layer.ink.name, self.progress)
         for screen in layer.screens:
-            for batch in screen.shapes():
+            for batch in counted.each(screen.shapes()):
                 if batch.total == 0:
                     continue
                 paint = self._stamps(batch) if isinstance(batch, Stamps) else self._polygons(batch)

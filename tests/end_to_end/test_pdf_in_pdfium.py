@@ -179,3 +179,13 @@ def test_far_end_of_a_long_row() -> None:
     assert alone.sum() > 100
     # a shift by one micrometre (a twentieth of a pixel) changes an edge pixel by 0.05
     assert np.abs(ours - alone).max() < 0.06
+
+
+def test_progress_is_told_at_each_batch() -> None:
+    """invariant: the shapes so far, by ink, and the same bytes as without."""
+    told: list[str] = []
+    design = drawings.design(
+        drawings.job(INKS[:1]), drawings.Drawn("s", INKS[0].name, [box(0, 0, 5, 5), box(1, 1, 2, 2)])
+    )
+    assert pdf.write(design, progress=told.append) == pdf.write(design)
+    assert told == [f"writing base.pdf: {INKS[0].name}, {n} shapes" for n in (1, 2)]

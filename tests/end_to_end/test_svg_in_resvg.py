@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import re
+from collections.abc import Iterator
 from xml.etree import ElementTree
 
 import numpy as np
@@ -13,7 +14,7 @@ from PIL import Image
 from patterngen import registry
 from patterngen.model.job import Ink
 from patterngen.model.lattice import Lattice
-from patterngen.model.shapes import Polygons, Stamps
+from patterngen.model.shapes import Batch, Polygons, Stamps
 from patterngen.writers import svg
 from tests import drawings
 
@@ -21,28 +22,23 @@ resvg = pytest.importorskip("resvg_py")
 
 RGB = {"Black": "#000000"}
 SVG = "{http://www.w3.org/2000/svg}"
-# angles that no pixel grid repeats: this reader samples each pixel in a few rows only.
-# Where dots overlap it counts an edge twice between elements, and the explicit drawing has
-# more elements than ours; the coefficient of a heavy tint is small, so that shows there most.
-ALONE, OVERLAPPING = (1e-3, 3e-3), (1.5e-3, 9e-3)
+# angles that no pixel grid repeats: this reader samples each pixel in a few rows only
 CASES = [
-    ("dots", "simpledot", 0.02, 41, 23, ALONE),
-    ("dots", "simpledot", 0.3, 45, 12, ALONE),
-    ("dots", "simpledot", 0.7, 41, 23, ALONE),
-    ("dots", "simpledot", 0.85, 41, 23, OVERLAPPING),
-    ("dots", "square", 0.4, 41, 23, ALONE),
-    ("dots", "rhomboid", 0.6, 41, 23, ALONE),
-    ("dots", "round", 0.7, 41, 23, OVERLAPPING),
-    ("dots", "cosinedot", 0.75, 45, 12, OVERLAPPING),
-    ("dots", "ellipse", 0.8, 41, 23, OVERLAPPING),
-    ("lines", None, 0.3, 41, 23, ALONE),
+    ("dots", "simpledot", 0.02, 41, 23),
+    ("dots", "simpledot", 0.3, 45, 12),
+    ("dots", "simpledot", 0.7, 41, 23),
+    ("dots", "simpledot", 0.85, 41, 23),
+    ("dots", "square", 0.4, 41, 23),
+    ("dots", "rhomboid", 0.6, 41, 23),
+    ("dots", "round", 0.7, 41, 23),
+    ("dots", "cosinedot", 0.75, 45, 12),
+    ("dots", "ellipse", 0.8, 41, 23),
+    ("lines", None, 0.3, 41, 23),
 ]
 
 
-@pytest.mark.parametrize(("kind", "shape", "tone", "a", "b", "same_reader"), CASES)
-def test_tone_and_first_coefficient(
-    kind: str, shape: str | None, tone: float, a: int, b: int, same_reader: tuple[float, float]
-) -> None:
+@pytest.mark.parametrize(("kind", "shape", "tone", "a", "b"), CASES)
+def test_tone_and_first_coefficient(kind: str, shape: str | None, tone: float, a: int, b: int) -> None:
     """A whole number of periods fits the page, so its mean is the tone and its coefficient the screen's."""
     screen = registry.load("patterngen.screens", kind).make(drawings.request(kind, shape, tone, a=a, b=b))
     ours = drawings.read_svg(svg.write(drawings.design(drawings.job(), screen), rgb=RGB))
@@ -50,8 +46,8 @@ def test_tone_and_first_coefficient(
     assert ours.shape == explicit.shape == (drawings.SIDE_PIXELS, drawings.SIDE_PIXELS)
     frequency = screen.frequencies_per_mm[0]
     first = drawings.coefficient(ours, frequency)
-    assert ours.mean() == pytest.approx(explicit.mean(), rel=same_reader[0])
-    assert abs(first / drawings.coefficient(explicit, frequency) - 1) < same_reader[1]
+    assert ours.mean() == pytest.approx(explicit.mean(), rel=1e-3)
+    assert abs(first / drawings.coefficient(explicit, frequency) - 1) < 3e-3
     coefficients = screen.coefficients(tone, reach=1)
     truth = coefficients[(2,) + (1,) * (coefficients.ndim - 1)]
     # what the reader's antialiasing may add
@@ -93,6 +89,89 @@ def test_the_lighter_drawing_is_the_same_drawing(
     # a pixel on an edge differs by the reader's flattening, up to half a pixel
     assert np.abs(light - exact).max() < 0.6
     assert np.mean(np.abs(light - exact)) < 0.02 * exact.mean()
+
+
+@pytest.mark.parametrize(("shape", "tone"), [("ellipse", 0.95), ("simpledot", 0.9), ("round", 0.8)])
+@pytest.mark.parametrize("dpi", [96, 200])
+def test_no_seams_between_neighbours_seen_from_afar(shape: str, tone: float, dpi: int) -> None:
+    """With a few dots to a pixel the tone is still the tone: neighbours are one fill, not laid over each other.
+
+    As one element a row such a tint came out 0.06 to 0.19 too light at 96 dpi.
+    """
+    screen = registry.load("patterngen.screens", "dots").make(drawings.request("dots", shape, tone, a=41, b=23))
+    seen = drawings.read_svg(svg.write(drawings.design(drawings.job(), screen), rgb=RGB), dpi=dpi)
+    # the reader's own antialiasing has sixteen steps or so; the page's rim is a pixel wide
+    assert seen[1:-1, 1:-1].mean() == pytest.approx(tone, abs=6e-3)
+
+
+@pytest.mark.parametrize("tone", [0.3, 0.85])
+def test_blocks_draw_the_same(monkeypatch: pytest.MonkeyPatch, tone: float) -> None:
+    """second way: what is too long for one path, as blocks used again and again, against the one path."""
+    screen = registry.load("patterngen.screens", "dots").make(drawings.request("dots", "round", tone, a=45, b=12))
+    design = drawings.design(drawings.job(), screen)
+    one = svg.write(design, rgb=RGB)
+    monkeypatch.setattr(svg, "_TEXT_A_PATH", 60_000)
+    blocks = svg.write(design, rgb=RGB)
+    assert b"<use" not in one
+    assert blocks.count(b"<use") > 40
+    assert len(blocks) < 0.5 * len(one)
+    seen, wanted = drawings.read_svg(blocks), drawings.read_svg(one)
+    # an edge that two elements share counts twice
+    assert seen.mean() == pytest.approx(wanted.mean(), rel=2e-3)
+    assert np.mean(np.abs(seen - wanted)) < 3e-3
+
+
+def test_neighbours_in_a_picture_share_a_path() -> None:
+    """invariant: lone shapes of many sizes go into one path row after row, each at its place."""
+    stamps = scattered(radius_steps=9, outline_disc=False)
+    data = svg.write(drawings.design(drawings.job(), drawings.Drawn("s", "Black", [stamps])), rgb=RGB)
+    assert data.count(b"<path") == 1
+    assert data.count(b"z") == stamps.total
+
+
+def test_pieces_are_the_file_and_progress_is_told() -> None:
+    """invariant: piece by piece the same bytes; each batch is told with the shapes so far, by ink."""
+    told: list[str] = []
+    stamps = scattered(radius_steps=2, outline_disc=True)
+    inks = (Ink("Cream", (90, 0, 10)), Ink("Rind", (60, 20, 50)))
+    design = drawings.design(
+        drawings.job(inks), drawings.Drawn("a", "Cream", [stamps, stamps]), drawings.Drawn("b", "Rind", [stamps])
+    )
+    rgb = {"Cream": "#eeeecc", "Rind": "#cc8844"}
+    parts = list(svg.pieces(design, rgb=rgb, progress=told.append))
+    assert b"".join(parts) == svg.write(design, rgb=rgb)
+    assert told == [
+        "writing base.svg: Cream, 169 shapes",
+        "writing base.svg: Cream, 338 shapes",
+        "writing base.svg: Rind, 169 shapes",
+    ]
+
+
+def test_batches_are_made_only_when_they_are_drawn() -> None:
+    """invariant: beyond what it takes to choose the lighter drawing no batch waits in memory."""
+    made: list[int] = []
+    n = 30_000
+    index = np.arange(n)
+    stamps = Stamps(
+        Lattice.square(pitch_mm=0.1, angle_deg=0.0, origin_mm=np.zeros(2)),
+        (drawings.disc(0.2), drawings.disc(0.3)),
+        np.column_stack([index % 400, index // 400]).astype(np.int32),
+        np.ones(n, np.int32),
+        (index % 2).astype(np.int32),
+    )
+
+    class Long(drawings.Drawn):
+        def shapes(self) -> Iterator[Batch]:
+            for k in range(6):
+                made.append(k)
+                yield stamps
+
+    parts = svg.pieces(drawings.design(drawings.job(), Long("s", "Black", [])), rgb=RGB)
+    next(parts)
+    assert made == [0, 1]
+    for _ in parts:
+        pass
+    assert made == [0, 1, 2, 3, 4, 5]
 
 
 def test_many_shapes_are_drawn_lighter() -> None:

@@ -8,7 +8,6 @@ import os
 from collections.abc import Iterator
 from dataclasses import replace
 from pathlib import Path
-from typing import cast
 
 import pytest
 
@@ -96,11 +95,8 @@ def test_the_manifest_tells_verdict_and_artwork() -> None:
     data = json.loads(manifest.dumps(job, {}, verdict="fail"))
     assert (data["verdict"], data["artwork"]) == ("fail", {})
 
-    class WithArtwork:
-        def __getattr__(self, name: str) -> object:
-            return {"b.svg": "22", "a.png": "11"} if name == "artwork" else getattr(job, name)
-
-    data = json.loads(manifest.dumps(cast("Job", WithArtwork()), {}))
+    job = replace(job, artwork={"b.svg": "22", "a.png": "11"})
+    data = json.loads(manifest.dumps(job, {}))
     assert list(data["artwork"].items()) == [("a.png", "11"), ("b.svg", "22")]
     assert data["verdict"] is None
 
@@ -140,10 +136,11 @@ def test_what_is_never_finished_is_not_there(tmp_path: Path) -> None:
 
 def test_a_link_put_in_a_files_place_meanwhile_is_refused_in_time(tmp_path: Path) -> None:
     folder = write(tmp_path, {"verdict.json": b"{}"})
-    with pytest.raises(InputError, match="a link"), job_folder(tmp_path, "wrapper") as again:
+    with job_folder(tmp_path, "wrapper") as again:
         again.write("base.pdf", b"1")
         (folder / "base.pdf").symlink_to(tmp_path / "elsewhere")
-        again.finish(manifest.dumps(drawings.job(), again.written))
+        with pytest.raises(InputError, match="a link"):
+            again.finish(manifest.dumps(drawings.job(), again.written))
     assert manifest.differences(folder) == []
 
 
