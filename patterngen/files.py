@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import hashlib
 import os
+import secrets
 import stat
 from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
@@ -93,15 +94,16 @@ def stage(path: Path, data: bytes | Iterable[bytes]) -> Staged:
     Pieces are written as they come, so that a long file need never be whole in memory.
     Raises `InputError` where the name is taken by a link, folder or pipe, `MachineError`
     where the machine fails; then no temporary is left.  Only a process that is killed leaves
-    one, `.<name>.<process>.part`.
+    one, `.<name>.<process>.<random>.part`.
     """
     path = Path(path)
     refuse_odd_target(path)
-    part = path.with_name(f".{path.name}.{os.getpid()}.part")
+    part = path.with_name(f".{path.name}.{os.getpid()}.{secrets.token_hex(4)}.part")
     wanted, size = hashlib.sha256(), 0
     try:
         with _told(path):
-            with part.open("wb") as file:
+            # a name that nobody could plant, and never through one that is there
+            with part.open("xb") as file:
                 for piece in (data,) if isinstance(data, bytes) else data:
                     wanted.update(piece)
                     size += len(piece)

@@ -145,11 +145,11 @@ def write(proof: Proof, out: Path, *, keep_failed: bool, progress: Stage | None 
     with _files.job_folder(out, job.name) as folder:
         if proof.verdict.status != "fail" or keep_failed:
             tell("writing base.pdf")
-            folder.write("base.pdf", pdf.write(proof.design))
+            folder.write("base.pdf", pdf.write(proof.design, progress=tell))
             tell("writing base.svg")
-            folder.write("base.svg", svg.write(proof.design, rgb=proof.colours.rgb()))
+            folder.write("base.svg", svg.pieces(proof.design, rgb=proof.colours.rgb(), progress=tell))
         folder.write("verdict.json", verdict_writer.dumps(proof.verdict))
-        folder.finish(manifest.dumps(job, folder.written))
+        folder.finish(manifest.dumps(job, folder.written, verdict=proof.verdict.status))
         return folder.path
 
 

@@ -22,7 +22,9 @@ WAIT_S = 5.0
 _POLL_S = 0.02
 _OURS = r"(?:(?:base|key|key-[^/]+)\.(?:svg|pdf)|overlay\.html|docket\.pdf|verdict\.json)"
 _FILE = re.compile(_OURS)
-_TEMPORARY = re.compile(rf"\.(?:{_OURS}|{re.escape(manifest.NAME)})\.\d+\.part")
+_ALWAYS_OURS = frozenset({"base.svg", "base.pdf", "verdict.json"})
+"""Taken away when they are not written again, even where no manifest says that they were ours."""
+_TEMPORARY = re.compile(rf"\.(?:{_OURS}|{re.escape(manifest.NAME)})\.\d+(?:\.[0-9a-f]+)?\.part")
 
 
 class JobFolder:
@@ -38,6 +40,7 @@ class JobFolder:
         self.written: dict[str, Written] = {}
         self._staged: dict[str, Staged] = {}
         self._lock: int | None = None
+        self._listed_before: frozenset[str] = frozenset()
 
     def write(self, name: str, data: bytes | Iterable[bytes]) -> None:
         """Write one file whole beside its place.  Raises `InputError` or `MachineError`."""
@@ -88,6 +91,7 @@ class JobFolder:
         if self._lock is not None:
             return
         self._lock = _locked(self.path)
+        self._listed_before = manifest.listed(self.path)
         with _told(self.path, "an older file could not be removed"):
             for entry in self.path.iterdir():
                 # nobody else is writing, so no living run needs it
@@ -97,7 +101,8 @@ class JobFolder:
     def _remove_left_over(self) -> None:
         with _told(self.path, "an older file could not be removed"):
             for entry in self.path.iterdir():
-                if _FILE.fullmatch(entry.name) and entry.name not in self.written:
+                ours = entry.name in self._listed_before or entry.name in _ALWAYS_OURS
+                if ours and _FILE.fullmatch(entry.name) and entry.name not in self.written:
                     entry.unlink(missing_ok=True)
 
 

@@ -26,10 +26,10 @@ class Written:
     size: int
 
 
-def dumps(job: Job, files: Mapping[str, Written], *, verdict: str | None = None) -> bytes:
+def dumps(job: Job, files: Mapping[str, Written], *, verdict: str) -> bytes:
     """The manifest of a job's files, sorted by name.
 
-    It holds the `verdict` ("pass", "warn", "fail"; None: not judged), the preset as it was
+    It holds the `verdict` ("pass", "warn", "fail"), the preset as it was
     used and its digest, the digests of the artwork that it names, the program's version, and
     the seeds by name, but never what a seed was made from in secret.
     """
@@ -48,18 +48,21 @@ def dumps(job: Job, files: Mapping[str, Written], *, verdict: str | None = None)
     )
 
 
+def listed(folder: Path) -> frozenset[str]:
+    """Names of the files that the folder's manifest lists; none where there is no manifest, or not a whole one."""
+    try:
+        return frozenset(_read(folder))
+    except InputError:
+        return frozenset()
+
+
 def differences(folder: Path) -> list[str]:
-    """One sentence for each file of a finished job that is missing or no longer what was written.
+    """One sentence for each file of a finished job that is missing, no longer what was written, or added.
 
     Raises `InputError` where there is no manifest, or none that can be read: that job is
     not finished.
     """
-    path = folder / NAME
-    data = read_plain_file(path, most_bytes=_MOST_BYTES, what="the manifest")
-    try:
-        files = {str(name): (str(e["sha256"]), int(e["bytes"])) for name, e in json.loads(data)["files"].items()}
-    except (ValueError, KeyError, TypeError, AttributeError, RecursionError):
-        raise InputError(Fault(str(path), "", "this is not a manifest")) from None
+    files = _read(folder)
     out = []
     for name, (sha256, size) in sorted(files.items()):
         target = folder / name
@@ -69,4 +72,15 @@ def differences(folder: Path) -> list[str]:
             out.append(f"{name}: missing")
         elif target.stat().st_size != size or digest_of(target) != sha256:
             out.append(f"{name}: not what was written")
-    return out
+    there = {entry.name for entry in folder.iterdir() if not entry.name.startswith(".")}
+    return [*out, *(f"{name}: added, the manifest does not list it" for name in sorted(there - files.keys() - {NAME}))]
+
+
+def _read(folder: Path) -> dict[str, tuple[str, int]]:
+    """SHA-256 and size by name.  Raises `InputError` where there is no whole manifest."""
+    path = folder / NAME
+    data = read_plain_file(path, most_bytes=_MOST_BYTES, what="the manifest")
+    try:
+        return {str(name): (str(e["sha256"]), int(e["bytes"])) for name, e in json.loads(data)["files"].items()}
+    except (ValueError, KeyError, TypeError, AttributeError, RecursionError):
+        raise InputError(Fault(str(path), "", "this is not a manifest")) from None

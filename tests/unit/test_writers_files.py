@@ -24,7 +24,7 @@ def write(out: Path, files: dict[str, bytes], job: Job | None = None) -> Path:
     with job_folder(out, job.name) as folder:
         for name, data in files.items():
             folder.write(name, data)
-        folder.finish(manifest.dumps(job, folder.written))
+        folder.finish(manifest.dumps(job, folder.written, verdict="pass"))
         return folder.path
 
 
@@ -96,17 +96,18 @@ def test_the_manifest_tells_verdict_and_artwork() -> None:
     assert (data["verdict"], data["artwork"]) == ("fail", {})
 
     job = replace(job, artwork={"b.svg": "22", "a.png": "11"})
-    data = json.loads(manifest.dumps(job, {}))
+    data = json.loads(manifest.dumps(job, {}, verdict="pass"))
     assert list(data["artwork"].items()) == [("a.png", "11"), ("b.svg", "22")]
-    assert data["verdict"] is None
+    assert data["verdict"] == "pass"
 
 
 def test_drawings_of_an_earlier_run_do_not_stay_beside_a_failed_verdict(tmp_path: Path) -> None:
     old = {"base.pdf": b"1", "base.svg": b"2", "key.svg": b"3", "key-seal.pdf": b"4", "overlay.html": b"5"}
     folder = write(tmp_path, {**old, "verdict.json": b"{}"})
     (folder / "notes.txt").write_text("the user's own")
+    (folder / "key-mine.pdf").write_text("the user's own too: no manifest lists it")
     write(tmp_path, {"verdict.json": b'{"verdict": "fail"}'})
-    assert names(folder) == ["manifest.json", "notes.txt", "verdict.json"]
+    assert names(folder) == ["key-mine.pdf", "manifest.json", "notes.txt", "verdict.json"]
 
 
 @pytest.mark.parametrize("stop", [KeyboardInterrupt, MachineError, ZeroDivisionError])
@@ -140,8 +141,8 @@ def test_a_link_put_in_a_files_place_meanwhile_is_refused_in_time(tmp_path: Path
         again.write("base.pdf", b"1")
         (folder / "base.pdf").symlink_to(tmp_path / "elsewhere")
         with pytest.raises(InputError, match="a link"):
-            again.finish(manifest.dumps(drawings.job(), again.written))
-    assert manifest.differences(folder) == []
+            again.finish(manifest.dumps(drawings.job(), again.written, verdict="pass"))
+    assert manifest.differences(folder) == ["base.pdf: added, the manifest does not list it"]
 
 
 def test_pieces_are_written_as_they_come(tmp_path: Path) -> None:
@@ -155,7 +156,7 @@ def test_pieces_are_written_as_they_come(tmp_path: Path) -> None:
     with job_folder(tmp_path, "wrapper") as own:
         own.write("base.svg", pieces())
         assert own.written["base.svg"].size == 11
-        own.finish(manifest.dumps(drawings.job(), own.written))
+        own.finish(manifest.dumps(drawings.job(), own.written, verdict="pass"))
     assert (folder / "base.svg").read_bytes() == b"<svg></svg>"
     assert manifest.differences(folder) == []
 
@@ -190,7 +191,7 @@ def test_a_second_writer_is_told(tmp_path: Path, monkeypatch: pytest.MonkeyPatch
         first.write("base.pdf", b"1")
         with pytest.raises(MachineError, match="wrapper: another run"), job_folder(tmp_path, "wrapper") as second:
             second.write("base.pdf", b"2")
-        first.finish(manifest.dumps(drawings.job(), first.written))
+        first.finish(manifest.dumps(drawings.job(), first.written, verdict="pass"))
     assert manifest.differences(tmp_path / "wrapper") == []
     assert (write(tmp_path, {"base.pdf": b"3"}) / "base.pdf").read_bytes() == b"3"
 
