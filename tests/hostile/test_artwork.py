@@ -22,6 +22,7 @@ from PIL import Image
 from patterngen.errors import InputError
 from patterngen.job.read import load
 from patterngen.model.job import Job
+from tests import cream_lid
 
 HEAD = (
     '<svg xmlns="http://www.w3.org/2000/svg" xmlns:xlink="http://www.w3.org/1999/xlink"'
@@ -144,21 +145,7 @@ SVG_MENDED = {
     "beyond the sheet": (svg('<rect x="-5" y="5" width="200" height="10"/>'), "cut there"),
 }
 
-PRESET = """\
-patterngen = 1
-title = "Fennick & Oake, cream lid"
-[sheet]
-size = ["60 mm", "40 mm"]
-[[ink]]
-name = "Clover"
-lab = [55, -37, -50]
-[[screen]]
-name = "clover"
-ink = "Clover"
-kind = "dots"
-ruling = "60 /cm"
-angle = "15 deg"
-"""
+PRESET = cream_lid.WITHOUT_TONE
 
 
 def with_area(folder: Path, data: bytes, *, more: str = "") -> Path:

@@ -15,25 +15,9 @@ import pytest
 
 from patterngen.errors import InputError
 from patterngen.job.read import load
+from tests import cream_lid
 
-GOOD = """\
-patterngen = 1
-title = "Fennick & Oake, cream lid"
-[sheet]
-size = ["60 mm", "40 mm"]
-[press]
-imager = "2400 dpi"
-[[ink]]
-name = "Clover"
-lab = [55, -37, -50]
-[[screen]]
-name = "clover"
-ink = "Clover"
-kind = "dots"
-ruling = "150 lpi"
-angle = "15 deg"
-tone = "40 %"
-"""
+GOOD = cream_lid.WITH_IMAGER
 
 
 def changed(old: str, new: str) -> Callable[[], bytes]:

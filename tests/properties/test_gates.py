@@ -19,25 +19,11 @@ from patterngen.job.outlines import OutlineError, read
 from patterngen.job.read import load
 from patterngen.model.fields import name_problem, nearest_name, text_problem
 from patterngen.units import ANGLE, LENGTH, RULING, SHARE, Quantity, QuantityError, parse, spell
+from tests import cream_lid
 
 QUICK = settings(max_examples=200, deadline=None, derandomize=True, suppress_health_check=[HealthCheck.too_slow])
 QUANTITIES = st.sampled_from([LENGTH, RULING, ANGLE, SHARE])
-GOOD = """\
-patterngen = 1
-title = "Fennick & Oake, cream lid"
-[sheet]
-size = ["60 mm", "40 mm"]
-[[ink]]
-name = "Clover"
-lab = [55, -37, -50]
-[[screen]]
-name = "clover"
-ink = "Clover"
-kind = "dots"
-ruling = "150 lpi"
-angle = "15 deg"
-tone = "40 %"
-"""
+GOOD = cream_lid.TEXT
 
 
 def refusal(call: Callable[..., Any], *values: Any) -> Any:
