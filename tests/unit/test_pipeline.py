@@ -208,3 +208,17 @@ def test_the_calibration_on_practice(tones: tuple[int, int, int, int], lpi: int)
     assert status('screen.yellow.angle="7.5 deg"') == "fail"
     if tones != TRIAL_TONES[1]:
         assert status('screen.black.angle="30 deg"') == "fail"
+
+
+def test_two_frequencies_are_one_only_closer_than_a_tenth_of_the_diagonals() -> None:
+    """invariant: the agreed tolerance, 1 / (10 diagonals); a near balance splits its families by more than that."""
+    diagonal_mm = 100 * np.sqrt(2)
+    for share, joined in ((0.35, False), (0.05, True)):
+        lpi = 150 + share / diagonal_mm * 25.4
+        inks = {"Cyan": 40, "Magenta": 40, "Black": 40}
+        table = verdict_of(inks, f'screen.cyan.ruling="{lpi:.9f} lpi"').beats
+        rosette = 2 * np.sin(np.deg2rad(15)) * 150 / 25.4
+        near = np.abs(np.hypot(*table.frequency_per_mm.T) - rosette) < 2 / diagonal_mm
+        f = table.frequency_per_mm[near]
+        apart = np.hypot(*(f[:, None] - f[None, :]).transpose(2, 0, 1))[np.triu_indices(len(f), 1)]
+        assert (apart.min() < 1 / diagonal_mm) is not joined
