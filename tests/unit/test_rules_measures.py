@@ -481,7 +481,7 @@ def test_remarks_become_warnings() -> None:
     screen = MadeScreen("Black", 45.0)
     assert only("input-odd", evidence(screen)).status == "pass"
     two = found("input-odd", evidence(screen, job={"remarks": ("one thing", "another thing")}))
-    assert [(f.status, f.message) for f in two] == [("warn", "one thing"), ("warn", "another thing")]
+    assert [(f.status, f.message) for f in two] == [("warn", "one thing."), ("warn", "another thing.")]
 
 
 # ---------------------------------------------------------------- the eye
