@@ -44,37 +44,25 @@ def every_in_box(frequencies: list[np.ndarray], *, reach: int, f_max_per_mm: flo
 
 
 def every_by_order(frequencies: list[np.ndarray], *, total: int, f_max_per_mm: float) -> np.ndarray:
-    """All combinations up to a total order by trying each: half sums, only pairs that may be of that order."""
-    half = len(frequencies) // 2
-    sides = []
-    for part in (frequencies[:half], frequencies[half:]):
-        orders = _ball(sum(map(len, part)), total)
-        size = np.abs(orders).sum(axis=1)
-        by_size = np.argsort(size, kind="stable")
-        orders, size = orders[by_size], size[by_size]
-        sides.append((orders, size, orders @ np.concatenate(part)))
-    (left, size_left, f_left), (right, size_right, f_right) = sides
+    """All combinations up to a total order by trying each: every vector of the ball, its frequency by one product."""
+    axes = np.concatenate(frequencies)
+    orders = _ball(len(axes), total)
     found = []
-    for size in range(total + 1):
-        rows = np.flatnonzero(size_left == size)
-        allowed = int(np.searchsorted(size_right, total - size, side="right"))
-        for block in np.array_split(rows, max(1, len(rows) * allowed // 1_500_000)):
-            x = f_left[block, 0, None] + f_right[:allowed, 0]
-            y = f_left[block, 1, None] + f_right[:allowed, 1]
-            i, j = np.nonzero(x * x + y * y <= f_max_per_mm**2)
-            found.append(np.concatenate([left[block[i]], right[j]], axis=1))
-    return np.concatenate(found)
+    for block in np.array_split(orders, max(1, len(orders) // 500_000)):
+        f = block @ axes
+        found.append(block[f[:, 0] ** 2 + f[:, 1] ** 2 <= f_max_per_mm**2])
+    return np.concatenate(found).astype(np.int64)
 
 
 def _ball(axes: int, total: int) -> np.ndarray:
     """All integer vectors whose moduli add up to at most `total`."""
-    rows = np.zeros((1, 0), dtype=np.int64)
+    rows = np.zeros((1, 0), dtype=np.int8)
     left = np.array([total])
     for _ in range(axes):
         count = 2 * left + 1
         parent = np.repeat(np.arange(len(rows)), count)
         value = np.arange(len(parent)) - np.repeat(np.cumsum(count) - count, count) - left[parent]
-        rows = np.concatenate([rows[parent], value[:, None]], axis=1)
+        rows = np.concatenate([rows[parent], value[:, None].astype(np.int8)], axis=1)
         left = left[parent] - np.abs(value)
     return rows
 
