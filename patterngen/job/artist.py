@@ -29,6 +29,8 @@ def main() -> None:
 
 
 def _answer(task: Mapping[str, Any], data: bytes) -> tuple[dict[str, Any], bytes]:
+    from shapely.errors import ShapelyError
+
     from patterngen.job.outlines import OutlineError
     from patterngen.job.pictures import PictureError
 
@@ -41,6 +43,9 @@ def _answer(task: Mapping[str, Any], data: bytes) -> tuple[dict[str, Any], bytes
             "allowed": error.allowed,
             "nearest": error.nearest,
         }, b""
+    except ShapelyError:
+        problem = "has outlines that cannot be united"
+        return {"problem": problem, "value": "", "allowed": "outlines that do not cross", "nearest": ""}, b""
     except MemoryError:
         return {
             "problem": "needs too much memory",

@@ -17,7 +17,7 @@ import numpy as np
 
 from patterngen.job.rings import SMALLEST_MM2, fill, rings_of, signed_area
 from patterngen.job.svg_coordinates import length, page_length_mm, page_matrix, page_remarks, transform
-from patterngen.job.svg_curves import CHORD_ERROR_MM, MOST_POINTS, path_points, too_many_points
+from patterngen.job.svg_curves import MOST_POINTS, too_many_points
 from patterngen.job.svg_remarks import OutlineError, Remarks, clip
 from patterngen.job.svg_shapes import SHAPES, subpaths
 from patterngen.job.svg_style import Style, Styles
@@ -27,7 +27,7 @@ from patterngen.model.lattice import FloatArray
 if TYPE_CHECKING:
     from shapely.geometry.base import BaseGeometry
 
-__all__ = ["CHORD_ERROR_MM", "OutlineError", "Outlines", "path_points", "read"]
+__all__ = ["OutlineError", "Outlines", "read"]
 
 _GROUPS = frozenset(["g", "a"])
 # these draw nothing where they stand

@@ -46,10 +46,11 @@ def fill(rings: list[FloatArray], *, even_odd: bool) -> tuple[BaseGeometry, bool
         work += len(near) * len(ring)
         if work > _MOST_WORK:
             raise OutlineError("its outlines cross too often", allowed="simpler outlines: unite them first")
-        turns[near] += [_winding(ring, point) for point in inside[near]]
+        turns[near] += np.array([_winding(ring, point) for point in inside[near]], dtype=np.int64)
     kept = faces[turns % 2 == 1] if even_odd else faces[turns != 0]
-    # a ring that touches itself in a point is not "valid" but crosses nothing
-    crossing = not shapely.is_simple(shapely.get_exterior_ring(polygons[~valid])).all()
+    # a ring that touches itself in a point, or lies flat, is not "valid" but crosses nothing
+    odd = ~valid & (shapely.area(shapely.convex_hull(polygons)) > 0.0)
+    crossing = not shapely.is_simple(shapely.get_exterior_ring(polygons[odd])).all()
     return shapely.union_all(kept), bool(crossing)
 
 

@@ -9,7 +9,8 @@ import numpy as np
 import pytest
 import shapely
 
-from patterngen.job.outlines import CHORD_ERROR_MM, Outlines, path_points, read
+from patterngen.job.outlines import OutlineError, Outlines, read
+from patterngen.job.svg_curves import CHORD_ERROR_MM, path_points
 from patterngen.model.area import Area
 
 PAGE = (
@@ -269,3 +270,11 @@ def test_odd_pages_are_told(size: str, remarks: tuple[str, ...]) -> None:
     for words, remark in zip(remarks, found, strict=True):
         assert words in remark
         assert remark.startswith("art/lid.svg: its page")
+
+
+def test_flat_rings_hold_nothing() -> None:
+    """regression: a ring with no inside stopped the reader; beside a square it adds nothing, alone it is refused."""
+    drawn = outlines('<path d="M0 0H10V10H0zM30 30L40 30L35 30z"/>')
+    assert len(drawn.rings) == 1
+    with pytest.raises(OutlineError, match="has an area"):
+        outlines('<path d="M0 0L10 0L20 0z"/>')
