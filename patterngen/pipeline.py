@@ -26,6 +26,9 @@ if TYPE_CHECKING:
 
 Stage = Callable[[str], None]
 
+_SPECKS = 0.01
+"""Share of a picture's printed area that counts as specks at either end of its tones."""
+
 _DARKEST_PAPER_Y = 0.0299
 """Y of a paper at L 20."""
 
@@ -65,6 +68,9 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     from patterngen.job.check import too_much
     from patterngen.rules import _engine, _limits
 
+    if not isinstance(job, Job):
+        wanted = "what patterngen.load(preset) returns"
+        raise InputError(Fault("verify", "", "a job is wanted", value=repr(job)[:60], allowed=wanted))
     tell = progress or _silent
     where = f"{job.name}.toml" if job.folder else job.name
     colours = InkStack.of(job)
@@ -185,7 +191,11 @@ def overall(findings: tuple[Finding, ...]) -> Literal["pass", "warn", "fail"]:
 
 
 def tone_extremes(screen: Screen) -> tuple[float, float] | None:
-    """(smallest tone that draws anything, largest) on the plate; None where the screen draws nothing."""
+    """(smallest tone, largest) on the plate; None where the screen draws nothing.
+
+    Of a picture those that hold on a hundredth of what it prints at the least: single specks
+    of a photograph say nothing about a press.
+    """
     if screen.area.area_mm2() <= 0.0:
         return None
     if screen.tone.constant is not None:
@@ -196,7 +206,10 @@ def tone_extremes(screen: Screen) -> tuple[float, float] | None:
     x, y = grid_x.ravel(), grid_y.ravel()
     tones = screen.tone.at(x, y, size_mm=1.0 / screen.ruling_per_mm)[screen.area.contains(x, y)]
     tones = tones[tones > 1e-4]
-    return (float(tones.min()), float(tones.max())) if len(tones) else None
+    if not len(tones):
+        return None
+    low, high = np.quantile(tones, [_SPECKS, 1.0 - _SPECKS], method="nearest")
+    return float(low), float(high)
 
 
 def screen_facts(

@@ -13,7 +13,7 @@ from typing import Any, NoReturn
 import click
 
 from patterngen import __version__
-from patterngen.errors import InputError, MachineError, PatterngenError
+from patterngen.errors import Fault, InputError, MachineError, PatterngenError
 from patterngen.registry import load, names
 
 
@@ -65,6 +65,7 @@ def run() -> NoReturn:
             sys.stdout.flush()
     except click.ClickException as error:
         _say(f"patterngen: {error.format_message()}")
+        _tell_json({"faults": [asdict(Fault("call", "", error.format_message()))]})
         code = 2
     except click.exceptions.Exit as stop:
         code = stop.exit_code
@@ -74,10 +75,10 @@ def run() -> NoReturn:
     except PatterngenError as error:
         for line in str(error).splitlines():
             _say(line)
-        if isinstance(error, InputError) and "--json" in sys.argv:
-            from patterngen.cli._options import print_json
-
-            print_json({"faults": [asdict(fault) for fault in error.faults]})
+        if isinstance(error, InputError):
+            _tell_json({"faults": [asdict(fault) for fault in error.faults]})
+        else:
+            _tell_json({"machine": str(error)})
         code = error.exit_code
     except BrokenPipeError:
         # The reader of our output has gone; what is left to print has no address.
@@ -107,6 +108,15 @@ def _say(line: str) -> None:
         if sys.stderr is not None:
             encoding = sys.stderr.encoding or "ascii"
             print(line.encode(encoding, "backslashreplace").decode(encoding), file=sys.stderr)
+
+
+def _tell_json(data: object) -> None:
+    """What went wrong, for a script that asked for JSON."""
+    if "--json" in sys.argv:
+        from patterngen.cli._options import print_json
+
+        with contextlib.suppress(OSError, ValueError, MachineError):
+            print_json(data)
 
 
 def _mute_standard_output() -> None:

@@ -12,6 +12,8 @@ from typing import Any, TypeVar
 
 import click
 
+from patterngen.errors import MachineError
+
 Function = TypeVar("Function", bound=Callable[..., Any])
 
 preset_argument = click.argument("preset", type=click.Path(path_type=str))
@@ -57,7 +59,7 @@ def strong(text: str, colour: str) -> str:
 def print_json(data: object) -> None:
     """One JSON document on standard output, UTF-8 whatever the locale."""
     if sys.stdout is None:
-        return
+        raise MachineError("patterngen: standard output is closed")
     text = json.dumps(data, allow_nan=False, ensure_ascii=False, indent=2) + "\n"
     sys.stdout.flush()
     sys.stdout.buffer.write(text.encode("utf-8"))
@@ -99,8 +101,8 @@ class Progress:
                 continue
             if self._live:
                 self._write(f"\r\x1b[K{passed:5.1f} s  {self._stage}")
-            elif self._stage != self._told[0] or passed - self._told[1] >= 10.0:
-                self._told = (self._stage, passed)
+            elif self._stage.partition(":")[0] != self._told[0] or passed - self._told[1] >= 10.0:
+                self._told = (self._stage.partition(":")[0], passed)
                 self._write(f"{passed:5.1f} s  {self._stage}\n")
 
     def _write(self, text: str) -> None:

@@ -50,4 +50,6 @@ def command(
         print_words(report(proof.verdict, everything=everything))
         files = ", ".join(sorted(path.name for path in folder.iterdir() if not path.name.startswith(".")))
         print_words(f"\nWritten to {folder}: {files}")
+        if "base.pdf" not in files:
+            print_words("No printing files: a rule failed. Those of an earlier build were taken away.")
     return 1 if proof.verdict.status == "fail" else 0

@@ -7,10 +7,10 @@ from collections.abc import Iterator
 from patterngen.model.evidence import Evidence
 from patterngen.model.screen import Screen
 from patterngen.model.verdict import Measurement
-from patterngen.rules._angles import like_rulings, meeting, screens_apart_deg
+from patterngen.rules._angles import lightest_ink, like_rulings, meeting, screens_apart_deg
 from patterngen.rules._examples import dots, preset, usual_set
 from patterngen.rules._measuring import against
-from patterngen.rules._words import degrees, listed, rounded
+from patterngen.rules._words import degrees, listed
 
 SUMMARY = "a flat tint was left on the angle where another screened ink already sits"
 REASON = """A spot ink that is added to a job late is easily left at 45 degrees, where the black already
@@ -44,7 +44,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         stands = f"stands {degrees(off)} from" if off >= 0.05 else "stands at the angle of"
         text = f"The tint {name} {stands} {nearest.name}, which it overprints"
         if off < limit.value:
-            text += f": that angle is taken. {_free(evidence, others)}"
+            met = [a if b is tint else b for a, b in meeting(evidence) if tint in (a, b)]
+            text += f": that angle is taken. {_free(evidence, tint, met)}"
         yield against(
             limit,
             off,
@@ -55,17 +56,22 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         )
 
 
-def _free(evidence: Evidence, others: list[Screen]) -> str:
-    """Which of the usual angles keep the distance of drawing inks from all the others."""
-    apart = evidence.limits["angle_apart"].value
+def _free(evidence: Evidence, tint: Screen, others: list[Screen]) -> str:
+    """Which of the usual angles keep their distance from all the others, the lightest ink its smaller one."""
+    light = lightest_ink(evidence.design.job)
+
+    def wanted(other: Screen) -> float:
+        limit = "angle_apart_light" if light in (tint.ink, other.ink) else "angle_apart"
+        return evidence.limits[limit].value - 0.5
+
     free = [
         f"{angle:g}"
         for angle in (0.0, 15.0, 45.0, 75.0)
-        if all(_off_deg(angle, other) >= apart - 0.5 for other in others)
+        if all(_off_deg(angle, other) >= wanted(other) for other in others)
     ]
     if not free:
         return "No usual angle is free: change its ruling clearly."
-    return f"Free, {rounded(apart)} degrees from all it meets: {listed(free)}."
+    return f"Free, far enough from all it meets: {listed(free)}."
 
 
 def _off_deg(angle_deg: float, other: Screen) -> float:

@@ -43,7 +43,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     """Colour swing of every balance and of every slow beat."""
     for balance in evidence.balance:
         sentence = _balance_sentence(evidence, balance)
-        yield _against_both(evidence, balance.colour_swing_judged, listed(balance.names), sentence)
+        swings = (balance.colour_swing, balance.colour_swing_judged)
+        yield _against_both(evidence, *swings, listed(balance.names), sentence)
     table = evidence.beats
     slow = [
         int(row) for row in np.flatnonzero(np.isfinite(table.colour_swing) & ~slower_than_sheet(evidence))
@@ -53,6 +54,7 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         swing, judged = float(table.colour_swing[rows[0]]), float(table.colour_swing_judged[rows[0]])
         yield _against_both(
             evidence,
+            swing,
             judged,
             who,
             f"{who} shade the print in waves {width(float(table.period_mm[rows[0]]))} long; "
@@ -62,10 +64,11 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         text = (
             "No screens are in balance and no beat is longer than 2 mm: colour does not move with register."
         )
-        yield _against_both(evidence, 0.0, "all screens", text)
+        yield _against_both(evidence, 0.0, 0.0, "all screens", text)
 
 
-def _against_both(evidence: Evidence, swing: float, where: str, message: str) -> Measurement:
+def _against_both(evidence: Evidence, swing: float, judged: float, where: str, message: str) -> Measurement:
+    """The swing against both limits; it fails only where it does so as it counts in shadows."""
     warn, fail = evidence.limits["drift_warn"], evidence.limits["drift_fail"]
     return Measurement(
         swing,
@@ -76,6 +79,7 @@ def _against_both(evidence: Evidence, swing: float, where: str, message: str) ->
         fail.source,
         warn_at=warn.value,
         warn_source=warn.source,
+        worst="fail" if judged >= fail.value else "warn",
     )
 
 

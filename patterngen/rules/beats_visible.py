@@ -52,9 +52,8 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     for rows in patterns(table, seen, table.visibility_far / limits):
         row = rows[0]
         limit, judged = float(limits[row]), float(table.visibility_far_judged[row])
-        spared = judged < limit
-        measured = float(table.visibility_far[row]) if spared else judged
-        remark = _in_shadow(evidence, row) if measured < 0.98 * table.visibility_far[row] or spared else ""
+        spared, measured = judged < limit, float(table.visibility_far[row])
+        remark = _in_shadow(evidence, row, judged) if judged < 0.98 * measured else ""
         yield Measurement(
             measured,
             limit,
@@ -97,13 +96,14 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
         )
 
 
-def _in_shadow(evidence: Evidence, row: int) -> str:
+def _in_shadow(evidence: Evidence, row: int, judged: float) -> str:
     """Why a beat counts less than it is strong."""
     table = evidence.beats
     share = float(table.mean[row, 1]) / evidence.paper_y
     return (
         f"That is at its strongest, in tones of {rounded(100 * share)} % of the paper's luminance; shadows below "
-        f"{rounded(100 * evidence.limits['shadow'].value)} % count less in proportion."
+        f"{rounded(100 * evidence.limits['shadow'].value)} % count less in proportion, so it is judged as "
+        f"{rounded(judged)} times the threshold."
     )
 
 

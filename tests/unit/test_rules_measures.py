@@ -371,7 +371,7 @@ def test_a_tint_on_a_taken_angle_is_told_which_are_free() -> None:
     about = evidence(MadeScreen("Black", 45.0, tone=PICTURE), MadeScreen("Orange", 45.0))
     finding = only("angle-already-taken", about)
     assert (finding.where, finding.measured, finding.status) == ("orange", 0.0, "warn")
-    assert "Free, 30 degrees from all it meets: 0, 15 and 75." in finding.message
+    assert "Free, far enough from all it meets: 0, 15 and 75." in finding.message
 
 
 # ---------------------------------------------------------------- dots, lines, tones, ink
