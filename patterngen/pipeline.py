@@ -63,7 +63,7 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     """Derive what was left open, compute every beat, judge."""
     from patterngen.beats.find import find_beats
     from patterngen.beats.own import own_textures
-    from patterngen.beats.together import Together
+    from patterngen.beats.together import Together, tones_together
     from patterngen.colour.inks import InkStack
     from patterngen.job.check import too_much
     from patterngen.rules import _engine, _limits
@@ -104,7 +104,8 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         shadow=limits["shadow"].value,
     )
     tell("judging")
-    together = places.rows(window_mm=0.0)
+    together = tones_together(screens, job.overprints, job.sheet, window_mm=0.0)
+    most_ink, heaviest = places.heaviest()
     extremes = {screen.name: tone_extremes(screen) for screen in screens}
     eye = registry.load("patterngen.vision", job.viewing.eye)
     textures = own_textures(screens, together, colours=colours, viewer=viewer)
@@ -119,7 +120,8 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
         luminance=colours.luminance(),
         tone_extremes={name: found for name, found in extremes.items() if found},
         shapes_drawn={name: None if found else 0 for name, found in extremes.items()},
-        most_ink=places.most_ink(),
+        most_ink=most_ink,
+        heaviest=heaviest,
         paper_y=paper_y(colours),
         eye_valid_cpd=eye.VALID_CPD,
         eye_takes_light=eye.TAKES_LIGHT,

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from patterngen.model.area import BoolArray
 from patterngen.model.lattice import FloatArray
 
 MaskArray = NDArray[np.int64]
@@ -44,11 +45,17 @@ class Strengths:
 
     With Yule-Nielsen's n the averages N are those of R^(1/n); the mean is N^n, and a beat's
     amplitude is n N^(n-1) times the difference (first order of N^n).  Screens with no tone
-    in a row cannot take part there and are left out of that row's table.
+    in a row cannot take part there and are left out of that row's table; of the others those may
+    that `taking_part` (rows, screens) says.
     """
 
-    def __init__(self, primaries: FloatArray, tones: FloatArray, *, yule_nielsen: float) -> None:
+    def __init__(
+        self, primaries: FloatArray, tones: FloatArray, *, yule_nielsen: float, taking_part: BoolArray | None = None
+    ) -> None:
         self.rows, self.screens = tones.shape
+        bits = 1 << np.arange(self.screens, dtype=np.int64)
+        barred = np.zeros(tones.shape, dtype=bool) if taking_part is None else ~taking_part
+        self._barred = barred.astype(np.int64) @ bits
         root = np.asarray(primaries, dtype=float) ** (1.0 / yule_nielsen)
         self.mean = np.empty((self.rows, 3))
         self._tables: list[FloatArray] = []
@@ -79,7 +86,7 @@ class Strengths:
             inside |= ((sets >> screen) & 1) << bit
             covered |= 1 << screen
         out = self._tables[group][member][inside]
-        out[(sets & ~covered) != 0] = 0.0
+        out[(sets & (~covered | self._barred[row])) != 0] = 0.0
         return np.asarray(out)
 
     def shares(self, channels: tuple[int, ...]) -> Shares:
@@ -95,6 +102,7 @@ class Strengths:
             sets = np.zeros(1, dtype=np.int64)
             for screen in active:
                 sets = np.concatenate([sets, sets | (1 << screen)])
+            relative[(sets[None, :] & self._barred[members][:, None]) != 0] = 0.0
             largest[sets] = np.maximum(largest[sets], relative.max(axis=0))
             for row, contrasts in zip(members, relative, strict=True):
                 row_whole, each[row, active] = product_bound(contrasts)

@@ -11,6 +11,7 @@ from patterngen.beats._differences import Shares
 from patterngen.beats._enumerate import Candidates, Tier, Travel, combinations
 from patterngen.beats._superposition import Hits, Superposition
 from patterngen.beats._tiers import COARSE_PER_MM, JOINING, LISTED_FAR, LISTED_NEAR, bands
+from patterngen.model.area import BoolArray
 from patterngen.model.lattice import FloatArray
 from patterngen.model.screen import Grid
 from patterngen.model.seeing import Viewer
@@ -42,27 +43,37 @@ def search(over: Superposition, viewer: Viewer, *, diagonal_mm: float) -> Search
     to be listed, or to a cap; what is left then is in the bounds.
     """
     seen = over.shares(_LUMINANCE)
-    tiers = bands(viewer, start_per_mm=1.0 / diagonal_mm, strongest=_strongest(over, seen))
+    casts = over.casts
+    strongest = max(_strongest(over, seen, cast) for cast in casts)
+    tiers = bands(viewer, start_per_mm=1.0 / diagonal_mm, strongest=strongest)
     _widen(over, seen, tiers)
     slow = [Tier(-1.0, max(COARSE_PER_MM, 1.0 / diagonal_mm), _COLOUR_FLOOR)]
     found: list[Hits] = []
     floors = [tier.floor for tier in tiers]
-    for comb in (None, *over.combs):
-        hits, kept = in_tiers(over, _LUMINANCE, tiers, comb)
-        found.append(hits)
-        floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
-        found.append(in_tiers(over, _ANY, slow, comb)[0])
+    # those who never print in one place need not be tried together
+    for cast in casts:
+        for comb in (None, *over.combs):
+            hits, kept = in_tiers(over, _LUMINANCE, tiers, comb, cast=cast)
+            found.append(hits)
+            floors = [max(a, b) for a, b in zip(floors, kept, strict=True)]
+            found.append(in_tiers(over, _ANY, slow, comb, cast=cast)[0])
     near, far, far_coarse = _bounds(over, viewer, seen, tiers, floors)
     return Search(over.upright(Hits.joined(found)), near, far, far_coarse)
 
 
-def _candidates(over: Superposition, shares: Shares) -> list[Candidates]:
-    return [s.candidates(share) for s, share in zip(over.spectra, shares.each.T, strict=True)]
+def _candidates(over: Superposition, shares: Shares, cast: BoolArray) -> list[Candidates]:
+    """What each spectrum of the cast (spectra,) may contribute; the others nothing."""
+    return [
+        s.candidates(share) if plays else s.nobody()
+        for s, share, plays in zip(over.spectra, shares.each.T, cast, strict=True)
+    ]
 
 
-def _strongest(over: Superposition, shares: Shares) -> float:
+def _strongest(over: Superposition, shares: Shares, cast: BoolArray) -> float:
     """No combination of two or more has a larger contrast."""
-    peaks = sorted((float(c.weight.max(initial=0.0)) for c in _candidates(over, shares)), reverse=True)
+    peaks = sorted((float(c.weight.max(initial=0.0)) for c in _candidates(over, shares, cast)), reverse=True)
+    if not peaks:
+        return shares.whole
     certain = 1 if over.combs else 2
     first, others = peaks[:certain], peaks[certain:]
     return shares.whole * float(np.prod(first)) * float(np.prod(np.maximum(others, 1.0)))
@@ -76,7 +87,11 @@ def _beyond(travel: Travel, rest: FloatArray, candidates: Candidates, high_per_m
 
 def _beyond_each(over: Superposition, shares: Shares, tiers: Sequence[Tier]) -> FloatArray:
     """(tiers, spectra) the largest contrast of a combination with an order beyond that spectrum's reach."""
-    lists = _candidates(over, shares)
+    return np.asarray(np.maximum.reduce([_beyond_in(over, shares, tiers, cast) for cast in over.casts]))
+
+
+def _beyond_in(over: Superposition, shares: Shares, tiers: Sequence[Tier], cast: BoolArray) -> FloatArray:
+    lists = _candidates(over, shares, cast)
     travel = Travel(lists)
     rests = travel.all_but()
     # a comb cancels any length, so with one only the decay of the coefficients bounds
@@ -115,14 +130,15 @@ def _bounds(
 
 
 def in_tiers(
-    over: Superposition, channels: tuple[int, ...], tiers: Sequence[Tier], comb: Grid | None
+    over: Superposition, channels: tuple[int, ...], tiers: Sequence[Tier], comb: Grid | None, *, cast: BoolArray
 ) -> tuple[Hits, tuple[float, ...]]:
-    """Combinations of the tiers (without any comb, or with this one), and the floors that were kept to.
+    """Combinations of the tiers (without any comb, or with this one) among a cast, and the floors that were kept to.
 
-    A tier's floor is of the contrast in the strongest of the channels of XYZ.
+    `cast` (spectra,) says which spectra may take part.  A tier's floor is of the contrast in the
+    strongest of the channels of XYZ.
     """
     shares = over.shares(channels)
-    lists = _candidates(over, shares)
+    lists = _candidates(over, shares, cast)
     scaled = [replace(tier, floor=tier.floor / shares.whole) for tier in tiers]
     if comb is None and tiers:
         travel = Travel(lists)

@@ -113,6 +113,10 @@ class Spectrum:
         orders = self.orders[kept]
         return Candidates(orders, orders @ self.frequencies_per_mm, weight[kept], self._unlisted(of_level))
 
+    def nobody(self) -> Candidates:
+        """No order at all: the spectrum does not take part."""
+        return Candidates(self.orders[:0], np.zeros((0, 2)), np.zeros(0), np.zeros((1, 2)))
+
     def _unlisted(self, share: FloatArray) -> FloatArray:
         """Rows (length, weight) that bound all orders beyond the reach, `share` (levels,) times the tails.
 

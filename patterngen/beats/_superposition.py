@@ -14,7 +14,7 @@ from patterngen.beats._enumerate import IndexArray, OrderArray
 from patterngen.beats._lattice import distinct_rows
 from patterngen.beats._spectrum import Spectrum
 from patterngen.beats._tiers import octave, window_mm
-from patterngen.beats.together import Together
+from patterngen.beats.together import Together, TonesTogether
 from patterngen.errors import Fault, InputError
 from patterngen.model.area import BoolArray
 from patterngen.model.job import Overprint, SheetSize
@@ -33,16 +33,21 @@ _LEAST = 1e-12
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ToneRows:
-    """Tones that occur together: (rows, screens) on the plate and in print; which rows hold in each octave."""
+    """Tones that occur together: (rows, screens) on the plate and in print; which rows hold in each octave.
+
+    `taking_part` (rows, screens): a screen that only cuts into the place averages and takes no part.
+    """
 
     plate: FloatArray
     printed: FloatArray
+    taking_part: BoolArray
     of_octave: tuple[IndexArray, ...]
 
     @classmethod
     def blank(cls, screens: int) -> ToneRows:
         """One row in which nothing prints."""
-        return cls(np.zeros((1, screens)), np.zeros((1, screens)), (np.zeros(1, dtype=np.intp),))
+        nothing = np.zeros((1, screens))
+        return cls(nothing, nothing, nothing > 0, (np.zeros(1, dtype=np.intp),))
 
     @classmethod
     def of(cls, screens: Sequence[Screen], overprints: Sequence[Overprint], sheet: SheetSize) -> ToneRows:
@@ -50,14 +55,17 @@ class ToneRows:
         last = int(octave(np.array([sheet.diagonal_mm]))[0])
         together = Together(screens, overprints, sheet)
         found = [together.rows(window_mm=window_mm(number)) for number in range(last + 1)]
-        plate, place = np.unique(np.concatenate(found), axis=0, return_inverse=True)
+        rows = TonesTogether.joined(found)
+        columns = np.concatenate([rows.plate, rows.share, rows.taking_part], axis=1)
+        _, first, place = np.unique(columns, axis=0, return_index=True, return_inverse=True)
         place = place.ravel()
-        ends = np.cumsum([len(rows) for rows in found])
-        of_octave = tuple(np.unique(place[end - len(rows) : end]) for rows, end in zip(found, ends, strict=True))
-        printed = np.empty_like(plate)
+        ends = np.cumsum([len(part.plate) for part in found])
+        of_octave = tuple(np.unique(place[end - len(part.plate) : end]) for part, end in zip(found, ends, strict=True))
+        rows = rows.take(first)
+        printed = np.empty_like(rows.plate)
         for i, screen in enumerate(screens):
-            printed[:, i] = screen.printed_tone(plate[:, i])
-        return cls(plate, printed, of_octave)
+            printed[:, i] = screen.printed_tone(rows.plate[:, i])
+        return cls(rows.plate * rows.share, printed * rows.share, rows.taking_part, of_octave)
 
     def hold(self, row: int, octaves: NDArray[np.intp]) -> BoolArray:
         """Whether the row's tones hold over windows of each octave (n,)."""
@@ -121,7 +129,8 @@ class Superposition:
         self._taking_part = [
             i
             for i, screen in enumerate(screens)
-            if len(screen.frequencies_per_mm) and ((rows.printed[:, i] > 0) & (rows.printed[:, i] < 1)).any()
+            if len(screen.frequencies_per_mm)
+            and ((rows.printed[:, i] > 0) & (rows.printed[:, i] < 1) & rows.taking_part[:, i]).any()
         ]
         self._meshes = [grid for grid in grids if not grid.samples and len(grid.frequencies_per_mm)]
 
@@ -143,10 +152,26 @@ class Superposition:
         return (*screens, *[Spectrum.of_grid(grid, len(printed)) for grid in self._meshes])
 
     @cached_property
+    def casts(self) -> tuple[BoolArray, ...]:
+        """The largest sets of spectra (spectra,) that take part in one place; grids are everywhere."""
+        printed = self.rows.printed
+        screened = (printed > 0) & (printed < 1) & self.rows.taking_part
+        plays = np.stack(
+            [screened[:, i] if i >= 0 else np.ones(len(printed), dtype=bool) for i in self.screen_of], axis=1
+        )
+        kept: list[BoolArray] = []
+        for cast in sorted(np.unique(plays, axis=0), key=lambda c: -int(c.sum())):
+            if not any((cast <= other).all() for other in kept):
+                kept.append(cast)
+        return tuple(kept)
+
+    @cached_property
     def strengths(self) -> Strengths:
         """Averages and mixed differences of the primaries in every row of tones."""
         primaries = self.colours.primaries([screen.ink for screen in self.screens])
-        return Strengths(primaries, self.rows.printed, yule_nielsen=self.colours.yule_nielsen)
+        return Strengths(
+            primaries, self.rows.printed, yule_nielsen=self.colours.yule_nielsen, taking_part=self.rows.taking_part
+        )
 
     @property
     def mean(self) -> FloatArray:

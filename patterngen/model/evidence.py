@@ -32,6 +32,8 @@ class Evidence:
     """Per screen: how many shapes it draws, None where that was not counted."""
     most_ink: float
     """The largest sum of printed tones in one place (1 = 100 %); screens of one ink do not add up."""
+    heaviest: FloatArray
+    """Printed tones (screens,) in that place."""
     paper_y: float
     """Y of the paper (perfect diffuser = 1)."""
     eye_valid_cpd: tuple[float, float] | None = None

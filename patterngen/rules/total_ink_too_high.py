@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-import numpy as np
-
 from patterngen.model.evidence import Evidence
 from patterngen.model.verdict import Measurement
 from patterngen.rules._examples import dots, preset, usual_set
@@ -40,12 +38,10 @@ def measure(evidence: Evidence) -> Iterator[Measurement]:
     if limit is None:
         yield no_limit(evidence, "total_ink")
         return
-    sums = evidence.printed_together.sum(axis=1)
-    worst = int(np.argmax(sums))
     names = [screen.name for screen in evidence.design.base.screens]
     parts = [
-        f"{name} about {percent(float(tone))}"
-        for name, tone in zip(names, evidence.printed_together[worst], strict=True)
+        f"{name} {percent(float(tone))}"
+        for name, tone in zip(names, evidence.heaviest, strict=True)
         if tone > 0
     ]
     total = evidence.most_ink

@@ -114,7 +114,7 @@ def test_spectrum_is_that_of_the_print(seed: int) -> None:
     """
     screens = random_set(seed, repeats=True)
     over = Superposition(screens, (), COLOURS, ToneRows.of(screens, (), SHEET))
-    hits, floors = in_tiers(over, (1,), [Tier(-1.0, 3.0, 2e-6)], None)
+    hits, floors = in_tiers(over, (1,), [Tier(-1.0, 3.0, 2e-6)], None, cast=over.casts[0])
     assert floors[0] < 1e-5
     bins = np.rint(hits.frequency_per_mm * PERIOD_MM).astype(int)
     assert bins / PERIOD_MM == pytest.approx(hits.frequency_per_mm, abs=1e-9)

@@ -157,21 +157,58 @@ def test_supercells_keep_the_press_errors() -> None:
     assert [m for m in range(1, 23) if meets(m)] == [22]
 
 
+def with_outlines(folder: Path, outlines: dict[str, str], job: dict[str, Any]) -> Any:
+    """The verdict of a job whose areas are these SVG shapes by name, on its own sheet."""
+    wide, high = (length.removesuffix(" mm") for length in job["sheet"]["size"])
+    shapes = "".join(f'<g id="{name}">{shape}</g>' for name, shape in outlines.items())
+    (folder / "areas.svg").write_text(
+        f'<svg xmlns="http://www.w3.org/2000/svg" width="{wide}mm" height="{high}mm" '
+        f'viewBox="0 0 {wide} {high}">{shapes}</svg>',
+        encoding="utf-8",
+    )
+    (folder / "job.toml").write_text(tomlkit.dumps(job), encoding="utf-8")
+    return patterngen.verify(patterngen.load(folder / "job.toml"))
+
+
 def test_narrow_areas_on_wide_sheets_are_seen(tmp_path: Path) -> None:
     """regression: an area narrower than the step of a sampling grid was passed over."""
-    statuses = []
     for x in (100.3, 100.9, 102.0):
-        (tmp_path / "strip.svg").write_text(
-            '<svg xmlns="http://www.w3.org/2000/svg" width="700mm" height="500mm" viewBox="0 0 700 500">'
-            f'<rect x="{x}" y="100" width="1.2" height="300"/></svg>',
-            encoding="utf-8",
-        )
         job = preset({"Cyan": 40, "Black": 40}, sheet={"size": ["700 mm", "500 mm"]})
-        job["screen"][0].update(angle="30 deg", area={"svg": "strip.svg"})
-        job["screen"][1].update(area={"svg": "strip.svg"})
-        (tmp_path / "strip.toml").write_text(tomlkit.dumps(job), encoding="utf-8")
-        statuses.append(patterngen.verify(patterngen.load(tmp_path / "strip.toml")).status)
-    assert statuses == ["fail"] * 3
+        strip = {"svg": "areas.svg", "id": "strip"}
+        job["screen"][0].update(angle="30 deg", area=strip)
+        job["screen"][1].update(area=strip)
+        outlines = {"strip": f'<rect x="{x}" y="100" width="1.2" height="300"/>'}
+        assert with_outlines(tmp_path, outlines, job).status == "fail", x
+
+
+@pytest.mark.parametrize("width", [0.9, 3.0])
+def test_an_ink_in_stripes_hides_no_beat_of_the_others(tmp_path: Path, width: float) -> None:
+    """regression: a third, finely divided area cut up the ground on which two others beat."""
+    job = preset({"Cyan": 40, "Black": 30, "Yellow": 5}, sheet={"size": ["90 mm", "60 mm"]})
+    job["screen"][1]["angle"] = "16 deg"
+    bare = patterngen.verify(patterngen.load({**job, "screen": job["screen"][:2]}))
+    job["screen"][2].update(angle="45 deg", area={"svg": "areas.svg", "id": "stripes"})
+    stripes = "".join(f'<rect x="{x}" width="{width}" height="60"/>' for x in np.arange(0, 90, 2 * width))
+    striped = with_outlines(tmp_path, {"stripes": stripes}, job)
+    assert bare.status == striped.status == "fail"
+    # 5 % of yellow hardly change what cyan and black do
+    assert striped.beats.visibility_far.max() == pytest.approx(bare.beats.visibility_far.max(), rel=0.05)
+    assert np.nanmax(striped.beats.colour_swing) == pytest.approx(np.nanmax(bare.beats.colour_swing), rel=0.05)
+
+
+def test_many_panels_are_not_tried_with_each_other(tmp_path: Path) -> None:
+    """invariant: ten panels that do not touch each make the beats of one panel, and only those."""
+    tones = {"Cyan": 40, "Magenta": 30, "Yellow": 20}
+    job = preset(tones, sheet={"size": ["110 mm", "40 mm"]}, ink=[{"name": n, "lab": lab} for n, lab in LABS.items()])
+    panel = {"ink": "Black", "kind": "dots", "shape": "simpledot", "ruling": "150 lpi", "angle": "45 deg"}
+    outlines = {f"p{i}": f'<rect x="{11 * i}" y="5" width="9" height="30"/>' for i in range(10)}
+    for i, name in enumerate(outlines):
+        area = {"svg": "areas.svg", "id": name}
+        job["screen"].append({"name": name, **panel, "tone": f"{10 + 3 * i} %", "area": area})
+    table = with_outlines(tmp_path, outlines, job).beats
+    assert len(table)
+    together = table.taking_part()[:, 3:].sum(axis=1)
+    assert together.max() == 1
 
 
 def test_derived_values_have_their_origin_and_reason() -> None:

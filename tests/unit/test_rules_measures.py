@@ -145,6 +145,7 @@ def evidence(*screens: MadeScreen, press: Press | None = None, **changes: Any) -
         "luminance": {},
         "paper_y": 0.876,
         "most_ink": float(tones.sum()),
+        "heaviest": tones[0],
         "tone_extremes": {
             s.name: (s.tone.constant, s.tone.constant) if s.tone.constant is not None else (0.002, 0.998)
             for s in screens
@@ -413,10 +414,11 @@ def test_a_tint_outside_the_range_fails_and_a_picture_warns() -> None:
 def test_total_ink_takes_the_worst_place_and_the_printed_tone() -> None:
     screens = (MadeScreen("Cyan", 15.0), MadeScreen("Black", 45.0))
     printed = np.array([[0.2, 0.1], [0.9, 0.95], [1.0, 0.0]])
-    about = evidence(*screens, printed_together=printed, most_ink=1.85, press=Press(process="web-offset"))
+    press = Press(process="web-offset")
+    about = evidence(*screens, printed_together=printed, most_ink=1.85, heaviest=printed[1], press=press)
     finding = only("total-ink-too-high", about)
     assert finding.measured == pytest.approx(1.85)
-    assert "cyan about 90 % and black about 95 % make 185 % in print" in finding.message
+    assert "cyan 90 % and black 95 % make 185 % in print" in finding.message
     exact = {**about.limits, "total_ink": _limits.own_limit("total_ink", 1.85)}
     assert only("total-ink-too-high", replace(about, limits=exact)).status == "pass"
     own = {**about.limits, "total_ink": _limits.own_limit("total_ink", 1.8)}
