@@ -37,7 +37,10 @@ _STRONGEST = 300
 _TONE_ROWS = 4
 """Rows of tones (of the largest sum of amplitudes, as they are and as they count) for which colours are searched."""
 
-_REGISTERS = 3000
+_FAINT = 3e-6
+"""Components below this part of the mean are not carried along."""
+
+_REGISTERS = 2000
 _LEAST_SWING = 0.1
 """CIEDE2000 below which a balance is not worth a word."""
 
@@ -176,7 +179,8 @@ def _promising(over: Superposition, hits: Hits, rank: int) -> list[tuple[Complex
     out = []
     for strength, row, amplitude in chosen.values():
         if strength > 0.0:
-            kept = np.arange(len(hits))
+            relative = np.abs(amplitude) / np.maximum(over.mean[row], 1e-12)
+            kept = np.flatnonzero(relative.max(axis=1) >= _FAINT)
             if rank not in _MULTIPLES and len(hits) > _STRONGEST:
                 kept = np.sort(np.argsort(-np.abs(amplitude).max(axis=1), kind="stable")[:_STRONGEST])
             out.append((amplitude[kept], hits.take(kept), row))
