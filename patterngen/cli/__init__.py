@@ -80,8 +80,9 @@ def run() -> NoReturn:
         else:
             _tell_json({"machine": str(error)})
         code = error.exit_code
-    except BrokenPipeError:
-        # The reader of our output has gone; what is left to print has no address.
+    except (BrokenPipeError, SystemExit):
+        # The reader of our output has gone (click turns that into an exit of its own); what is
+        # left to print has no address, and that is no verdict.
         _mute_standard_output()
         code = 0
     except MemoryError:

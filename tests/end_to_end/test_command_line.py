@@ -110,6 +110,17 @@ def test_new_prints_a_preset_that_loads(tmp_path: Path) -> None:
     assert patterngen.load(tmp_path / "mine.toml").title.startswith("Fennick")
 
 
+def test_a_reader_that_goes_away_is_no_verdict() -> None:
+    with subprocess.Popen(
+        [sys.executable, "-m", "patterngen", "schema"], stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True
+    ) as process:
+        assert process.stdout is not None
+        process.stdout.close()
+        assert process.stderr is not None
+        assert process.stderr.read() == ""
+    assert process.returncode == 0
+
+
 def test_a_full_device_is_the_machines_fault() -> None:
     with Path("/dev/full").open("w") as full:
         done = subprocess.run(
