@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import time
 from itertools import product
 
 import numpy as np
@@ -121,12 +120,10 @@ def test_luminance_is_relative_to_the_paper() -> None:
     assert found["Slate"] == pytest.approx((54 / 111) ** 3, rel=1e-12)
 
 
-def test_sixteen_screens_take_no_time() -> None:
-    """65536 combinations, at most half a second even on a slow machine (measured: 0.06 s)."""
+def test_sixteen_screens() -> None:
+    """second way: the last of 65536 combinations is the product of all sixteen solids."""
     inks = tuple(Ink(f"Ink {i}", (30.0 + 4 * i, i, -i)) for i in range(16))
-    begin = time.perf_counter()
     found = stack(*inks).primaries([ink.name for ink in inks])
-    assert time.perf_counter() - begin < 0.5
     np.testing.assert_allclose(found[(1,) * 16], multiplied(*inks), rtol=1e-12)
 
 
