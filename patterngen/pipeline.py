@@ -11,7 +11,7 @@ import numpy as np
 
 from patterngen import registry
 from patterngen.errors import Fault, InputError
-from patterngen.model.cells import nearest_cell, smallest_supercell
+from patterngen.model.cells import guaranteeing_multiple, nearest_cell, smallest_supercell
 from patterngen.model.design import Design, Layer, Sheet
 from patterngen.model.evidence import Evidence
 from patterngen.model.job import Job, Press
@@ -109,14 +109,12 @@ def prove(job: Job, *, progress: Stage | None = None) -> Proof:
     extremes = {screen.name: tone_extremes(screen) for screen in screens}
     eye = registry.load("patterngen.vision", job.viewing.eye)
     textures = own_textures(screens, together, colours=colours, viewer=viewer)
-    printed = np.column_stack([screen.printed_tone(together[:, i]) for i, screen in enumerate(screens)])
     evidence = Evidence(
         design=design,
         beats=beats,
         balance=balance,
         limits=limits,
         tones_together=together,
-        printed_together=printed,
         luminance=colours.luminance(),
         tone_extremes={name: found for name, found in extremes.items() if found},
         shapes_drawn={name: None if found else 0 for name, found in extremes.items()},
@@ -243,7 +241,7 @@ def _imager_cell(screen: Screen, press: Press) -> dict[str, Any] | None:
         return None
     cells = press.imager_per_mm / screen.ruling_per_mm
     one = nearest_cell(cells=cells, angle_deg=screen.angle_deg)
-    kept = None
+    kept, always = None, None
     if press.angle_error_deg > 0.0 and press.size_error > 0.0:
         kept = smallest_supercell(
             cells=cells,
@@ -251,11 +249,14 @@ def _imager_cell(screen: Screen, press: Press) -> dict[str, Any] | None:
             angle_error_deg=press.angle_error_deg,
             ruling_error=press.size_error,
         )
+        always = guaranteeing_multiple(cells=cells, angle_error_deg=press.angle_error_deg)
     return {
         "pixels": [one.a, one.b],
+        "brick": list(one.brick),
         "angle_deg": one.angle_deg,
         "ruling_per_mm": one.ruling(press.imager_per_mm),
         "supercell_within_press_errors": None if kept is None else kept.multiple,
+        "supercell_for_any_angle": always,
     }
 
 

@@ -217,3 +217,18 @@ def keep(data: bytes, folder: Path, name: str) -> Path:
     path = folder / name
     path.write_bytes(data)
     return path
+
+
+def assert_as_explicit_and_true(ours: np.ndarray, explicit: np.ndarray, screen: Any, tone: float) -> None:
+    """Mean and first coefficient: as the same curves written out, in the same reader, and as computed."""
+    assert ours.shape == explicit.shape == (SIDE_PIXELS, SIDE_PIXELS)
+    frequency = screen.frequencies_per_mm[0]
+    first = coefficient(ours, frequency)
+    # what two ways to say the same may differ by in one reader: its eight bits and its own flattening
+    assert ours.mean() == pytest.approx(explicit.mean(), rel=1e-3)
+    assert abs(first / coefficient(explicit, frequency) - 1) < 3e-3
+    # what the reader's antialiasing may add; where dots overlap it counts an edge twice
+    coefficients = screen.coefficients(tone, reach=1)
+    truth = coefficients[(2,) + (1,) * (coefficients.ndim - 1)]
+    assert ours.mean() == pytest.approx(tone, rel=5e-3)
+    assert abs(first / truth - 1) < 1.5e-2

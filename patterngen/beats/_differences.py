@@ -2,6 +2,8 @@
 
 A screen that only averages enters with (1 - t) R0 + t R1 (Demichel 1924), one that takes
 part in a beat with R1 - R0.  Done axis by axis this is n 2^n work for all 2^n sets.
+
+Sources by their keys: demichel-1924, neugebauer-1937, yule-nielsen-1951; wyble-berns-2000 reviews them.
 """
 
 from __future__ import annotations

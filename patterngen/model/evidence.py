@@ -15,8 +15,8 @@ class Evidence:
     """Inputs of every rule.
 
     `limits` are those in force (process and overrides) by name.  `tones_together` (m, screens)
-    lists plate tones that occur together somewhere on the sheet, `printed_together` the same
-    after gain.  `luminance` maps an ink's name to Y of its solid (paper = 1).
+    lists plate tones that occur together somewhere on the sheet.  `luminance` maps an ink's
+    name to Y of its solid (paper = 1).
     """
 
     design: Design
@@ -24,7 +24,6 @@ class Evidence:
     balance: tuple[Balance, ...]
     limits: Mapping[str, Limit]
     tones_together: FloatArray
-    printed_together: FloatArray
     luminance: Mapping[str, float]
     tone_extremes: Mapping[str, tuple[float, float]]
     """Per screen: (smallest non-zero, largest) plate tone that occurs."""

@@ -362,10 +362,8 @@ def nearest_name(text: str) -> str:
     return f"{name}-1" if name_problem(name) else name
 
 
-Length = Annotated[float, QuantityField(LENGTH, low=-10_000.0, high=10_000.0)]
 PositiveLength = Annotated[float, QuantityField(LENGTH, low=0.0, high=10_000.0, above=True)]
 LengthOrZero = Annotated[float, QuantityField(LENGTH, low=0.0, high=10_000.0)]
-Ruling = Annotated[float, QuantityField(RULING, low=0.0, high=1000.0, above=True)]
 RulingOrChoose = Annotated[float | str, QuantityField(RULING, low=0.0, high=1000.0, above=True, choose=True)]
 Resolution = Annotated[float, QuantityField(RESOLUTION, low=0.0, high=10_000.0, above=True)]
 Angle = Annotated[float, QuantityField(ANGLE, low=-3600.0, high=3600.0)]

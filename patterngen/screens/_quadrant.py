@@ -562,15 +562,11 @@ def _edges_at(shape: Shape, levels: FloatArray, sides: tuple[float, float]) -> F
 class Extent:
     """How far one dot reaches, in half cells (1 is from its centre to its cell's edge).
 
-    `along`, `across`: on its axes.  `neck_a`, `neck_b`: half the width with which it crosses the
-    cell's edge at a = 1 and b = 1 (0 if it does not).  `edge` (n, 2) are points of its edge,
-    the corners among them.
+    `along`, `across`: on its axes.  `edge` (n, 2) are points of its edge, the corners among them.
     """
 
     along: float
     across: float
-    neck_a: float
-    neck_b: float
     edge: FloatArray
 
 
@@ -584,12 +580,9 @@ def extent(name: str, tone: float) -> Extent:
     w = found.start[:, None] + (found.stop - found.start)[:, None] * share
     p, _ = curve(shape, w, np.full_like(w, level[0]))
     a, b = 0.5 * (p + w), 0.5 * (p - w)
-    on_a, on_b = found.label == EDGE_A, found.label == EDGE_B
-    free = ~(on_a | on_b)
+    free = (found.label != EDGE_A) & (found.label != EDGE_B)
     return Extent(
         along=float(a.max()),
         across=float(b.max()),
-        neck_a=float(b[on_a].max()) if on_a.any() else 0.0,
-        neck_b=float(a[on_b].max()) if on_b.any() else 0.0,
         edge=np.stack([a[free].ravel(), b[free].ravel()], axis=1),
     )

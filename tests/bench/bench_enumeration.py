@@ -8,7 +8,7 @@ from time import perf_counter
 
 import numpy as np
 
-from patterngen.beats._enumerate import combinations_by_order, combinations_in_box
+from tests.orders import combinations_by_order, combinations_in_box
 
 F_MAX_PER_MM = 1.2
 GOALS = {"four screens, order 4 an axis": 30.0, "seven screens, total order 8": 15.0}

@@ -43,16 +43,7 @@ def test_tone_and_first_coefficient(kind: str, shape: str | None, tone: float, a
     screen = registry.load("patterngen.screens", kind).make(drawings.request(kind, shape, tone, a=a, b=b))
     ours = drawings.read_svg(svg.write(drawings.design(drawings.job(), screen), rgb=RGB))
     explicit = drawings.read_svg(drawings.explicit_svg(screen.shapes()))
-    assert ours.shape == explicit.shape == (drawings.SIDE_PIXELS, drawings.SIDE_PIXELS)
-    frequency = screen.frequencies_per_mm[0]
-    first = drawings.coefficient(ours, frequency)
-    assert ours.mean() == pytest.approx(explicit.mean(), rel=1e-3)
-    assert abs(first / drawings.coefficient(explicit, frequency) - 1) < 3e-3
-    coefficients = screen.coefficients(tone, reach=1)
-    truth = coefficients[(2,) + (1,) * (coefficients.ndim - 1)]
-    # what the reader's antialiasing may add
-    assert ours.mean() == pytest.approx(tone, rel=5e-3)
-    assert abs(first / truth - 1) < 1.5e-2
+    drawings.assert_as_explicit_and_true(ours, explicit, screen, tone)
 
 
 def scattered(*, radius_steps: int, outline_disc: bool) -> Stamps:

@@ -8,9 +8,9 @@ import numpy as np
 import pytest
 
 from patterngen.beats._balance import fastest_drift_per_mm
-from patterngen.beats._enumerate import combinations_by_order
 from patterngen.beats._swing import PhaseMean
 from patterngen.model.job import SheetSize
+from tests.orders import combinations_by_order
 from tests.superpositions import GreyInks, PerfectInks, beats_of, row_of, screen, sharp_eye
 
 SHEET = SheetSize(300.0, 200.0)

@@ -5,11 +5,12 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from patterngen.beats._enumerate import Tier, combinations_by_order, combinations_in_box
+from patterngen.beats._enumerate import Tier
 from patterngen.beats._search import in_tiers
 from patterngen.beats._superposition import Superposition, ToneRows
 from patterngen.beats._tiers import least_contrast
 from patterngen.model.screen import Screen
+from tests.orders import combinations_by_order, combinations_in_box
 from tests.superpositions import (
     SHEET,
     PixelComb,

@@ -9,14 +9,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from patterngen.beats._enumerate import (
-    Candidates,
-    Tier,
-    combinations,
-    combinations_by_order,
-    combinations_in_box,
-    near_pairs,
-)
+from patterngen.beats._enumerate import Candidates, Tier, combinations, near_pairs
+from tests.orders import combinations_by_order, combinations_in_box
 
 NONE = np.zeros((0, 2))
 

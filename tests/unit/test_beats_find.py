@@ -165,7 +165,7 @@ def test_contrast_over_register_is_what_shifts_make_of_it() -> None:
 
 
 def _coherent(screens: list, table: BeatTable, row: int, shifts_mm: np.ndarray) -> float:
-    from patterngen.beats._enumerate import combinations_by_order
+    from tests.orders import combinations_by_order
 
     vectors = [s.frequencies_per_mm for s in screens]
     orders = combinations_by_order(vectors, total=9, f_max_per_mm=3.2)

@@ -141,7 +141,6 @@ def evidence(*screens: MadeScreen, press: Press | None = None, **changes: Any) -
         "balance": (),
         "limits": _limits.in_force(job),
         "tones_together": tones,
-        "printed_together": tones,
         "luminance": {},
         "paper_y": 0.876,
         "most_ink": float(tones.sum()),
@@ -413,9 +412,8 @@ def test_a_tint_outside_the_range_fails_and_a_picture_warns() -> None:
 
 def test_total_ink_takes_the_worst_place_and_the_printed_tone() -> None:
     screens = (MadeScreen("Cyan", 15.0), MadeScreen("Black", 45.0))
-    printed = np.array([[0.2, 0.1], [0.9, 0.95], [1.0, 0.0]])
     press = Press(process="web-offset")
-    about = evidence(*screens, printed_together=printed, most_ink=1.85, heaviest=printed[1], press=press)
+    about = evidence(*screens, most_ink=1.85, heaviest=np.array([0.9, 0.95]), press=press)
     finding = only("total-ink-too-high", about)
     assert finding.measured == pytest.approx(1.85)
     assert "cyan 90 % and black 95 % make 185 % in print" in finding.message
